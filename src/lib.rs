@@ -1,0 +1,3 @@
+//! Corewright: proposes lateral-system changes for concrete towers.
+
+pub mod model;
