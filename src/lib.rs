@@ -1,3 +1,4 @@
 //! Corewright: proposes lateral-system changes for concrete towers.
 
 pub mod model;
+pub mod search;
