@@ -345,7 +345,11 @@ pub enum Base {
         per_node: BTreeMap<usize, f64>,
     },
     /// The base as a whole turns about the X and Y axes through `centre`, N m/rad.
-    RotationalSprings { about_x: f64, about_y: f64, centre: Point },
+    RotationalSprings {
+        about_x: f64,
+        about_y: f64,
+        centre: Point,
+    },
 }
 
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
