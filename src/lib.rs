@@ -1,5 +1,10 @@
 //! Corewright: proposes lateral-system changes for concrete towers.
 
-pub mod elements;
-pub mod model;
+pub mod blocktri;
 pub mod search;
+
+pub mod model;
+
+pub mod elements;
+
+pub mod analysis;

@@ -66,8 +66,13 @@ mod tests {
     #[test]
     fn a_rigid_motion_strains_nothing() {
         let nodes = fixed(&[(2.0, 1.0), (8.0, 9.0)]);
-        let reading =
-            Reading { sizes: &[0.5, 0.0, 0.0], seed: None, nodes: &nodes, core_x: 1, core_y: 2 };
+        let reading = Reading {
+            sizes: &[0.5, 0.0, 0.0],
+            seed: None,
+            nodes: &nodes,
+            core_x: 1,
+            core_y: 2,
+        };
         let arm = DeepArm {
             from: 0,
             to: 1,
@@ -77,8 +82,10 @@ mod tests {
             shear_modulus: 12e9,
         };
         let rows = arm.rows::<f64>(&reading);
-        let worst =
-            worst_strain(&rows, rigid_motion(&nodes, &[10.0, 13.2, 17.7], 0.1, 0.02, -0.03));
+        let worst = worst_strain(
+            &rows,
+            rigid_motion(&nodes, &[10.0, 13.2, 17.7], 0.1, 0.02, -0.03),
+        );
         assert!(worst < 1e-14, "{worst}");
     }
 }

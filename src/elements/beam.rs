@@ -87,9 +87,18 @@ impl FloorBeam {
         };
         let slope = |row: &mut Row<D>, end: usize, coefficient: f64| {
             let node = [self.from, self.to][end];
-            self.ends[end].slope(row, reading, node, direction, end == 0, constant(coefficient));
+            self.ends[end].slope(
+                row,
+                reading,
+                node,
+                direction,
+                end == 0,
+                constant(coefficient),
+            );
         };
-        let held: Vec<usize> = (0..2).filter(|&end| self.ends[end] != BeamEnd::Pinned).collect();
+        let held: Vec<usize> = (0..2)
+            .filter(|&end| self.ends[end] != BeamEnd::Pinned)
+            .collect();
         match held[..] {
             [] => Vec::new(),
             [end] => {
@@ -121,8 +130,13 @@ mod tests {
     #[test]
     fn a_rigid_motion_strains_nothing() {
         let nodes = fixed(&[(0.0, 0.0), (6.0, 2.0), (9.0, 3.0)]);
-        let reading =
-            Reading { sizes: &[0.0, 0.0], seed: None, nodes: &nodes, core_x: 0, core_y: 1 };
+        let reading = Reading {
+            sizes: &[0.0, 0.0],
+            seed: None,
+            nodes: &nodes,
+            core_x: 0,
+            core_y: 1,
+        };
         for ends in [
             [BeamEnd::Column, BeamEnd::Wall { far: 2 }],
             [BeamEnd::Column, BeamEnd::Pinned],

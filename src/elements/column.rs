@@ -42,8 +42,11 @@ impl ColumnPiece {
 
         let place = reading.place::<D>(self.node);
         for along_x in [true, false] {
-            let (width, breadth) =
-                if along_x { (self.width_x, self.width_y) } else { (self.width_y, self.width_x) };
+            let (width, breadth) = if along_x {
+                (self.width_x, self.width_y)
+            } else {
+                (self.width_y, self.width_x)
+            };
             let bending =
                 self.bending_factor * self.elastic_modulus * breadth * width.powi(3) / 12.0;
             let phi = 12.0 * bending / (self.shear_modulus * area * 5.0 / 6.0 * h * h);
@@ -78,8 +81,13 @@ mod tests {
     #[test]
     fn a_rigid_motion_strains_nothing() {
         let nodes = fixed(&[(7.0, -3.0)]);
-        let reading =
-            Reading { sizes: &[0.0, 0.0], seed: None, nodes: &nodes, core_x: 0, core_y: 1 };
+        let reading = Reading {
+            sizes: &[0.0, 0.0],
+            seed: None,
+            nodes: &nodes,
+            core_x: 0,
+            core_y: 1,
+        };
         let column = ColumnPiece {
             node: 0,
             height: 3.5,

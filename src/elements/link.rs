@@ -94,7 +94,9 @@ impl LinkBeam {
         let bending = breadth * d.powi(3) * (self.bending_modulus / 12.0);
         let shear = breadth * d * (self.shear_modulus * 5.0 / 6.0);
 
-        let held: Vec<usize> = (0..2).filter(|&end| self.ends[end] != LinkEnd::Pinned).collect();
+        let held: Vec<usize> = (0..2)
+            .filter(|&end| self.ends[end] != LinkEnd::Pinned)
+            .collect();
         match held[..] {
             [] => Vec::new(),
             [end] => {
@@ -156,7 +158,11 @@ fn root_share<D: Scalar>(depth: D, height: f64, breadth: D, wall: D) -> D {
     if relative.re() <= 0.0 {
         return Reading::constant(0.0);
     }
-    if breadth.re() < wall.re() { relative * breadth / wall } else { relative }
+    if breadth.re() < wall.re() {
+        relative * breadth / wall
+    } else {
+        relative
+    }
 }
 
 #[cfg(test)]
@@ -187,7 +193,13 @@ mod tests {
     fn a_rigid_motion_strains_nothing() {
         let nodes = nodes();
         let sizes = [0.7, 0.4, 0.3, 0.0, 0.0];
-        let reading = Reading { sizes: &sizes, seed: None, nodes: &nodes, core_x: 3, core_y: 4 };
+        let reading = Reading {
+            sizes: &sizes,
+            seed: None,
+            nodes: &nodes,
+            core_x: 3,
+            core_y: 4,
+        };
         let wall = |far| LinkEnd::Wall { far };
         for ends in [
             [wall(0), wall(3)],
@@ -206,15 +218,26 @@ mod tests {
     fn dual_numbers_agree_with_central_differences() {
         let nodes = nodes();
         for breadth in [None, Some(0.25)] {
-            let beam = link([LinkEnd::Wall { far: 0 }, LinkEnd::Wall { far: 3 }], breadth);
+            let beam = link(
+                [LinkEnd::Wall { far: 0 }, LinkEnd::Wall { far: 3 }],
+                breadth,
+            );
             let sizes = [0.7, 0.4, 0.3, 0.0, 0.0];
             for seed in beam.sizes() {
                 let at = |step: f64| {
                     let mut moved = sizes;
                     moved[seed] += step;
-                    let reading =
-                        Reading { sizes: &moved, seed: None, nodes: &nodes, core_x: 3, core_y: 4 };
-                    beam.rows::<f64>(&reading).iter().map(|row| row.stiffness).collect::<Vec<_>>()
+                    let reading = Reading {
+                        sizes: &moved,
+                        seed: None,
+                        nodes: &nodes,
+                        core_x: 3,
+                        core_y: 4,
+                    };
+                    beam.rows::<f64>(&reading)
+                        .iter()
+                        .map(|row| row.stiffness)
+                        .collect::<Vec<_>>()
                 };
                 let (up, down) = (at(1e-6), at(-1e-6));
                 let reading = Reading {
@@ -227,7 +250,10 @@ mod tests {
                 for (row, dual) in beam.rows::<Dual64>(&reading).iter().enumerate() {
                     let difference = (up[row] - down[row]) / 2e-6;
                     let error = (dual.stiffness.eps - difference).abs();
-                    assert!(error <= 1e-7 * dual.stiffness.re, "size {seed} row {row}: {error}");
+                    assert!(
+                        error <= 1e-7 * dual.stiffness.re,
+                        "size {seed} row {row}: {error}"
+                    );
                 }
             }
         }

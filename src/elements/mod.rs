@@ -69,7 +69,10 @@ pub struct Row<D> {
 
 impl<D: Scalar> Row<D> {
     pub fn new(stiffness: D) -> Self {
-        Row { terms: Vec::with_capacity(12), stiffness }
+        Row {
+            terms: Vec::with_capacity(12),
+            stiffness,
+        }
     }
 
     fn add(&mut self, level: usize, kind: FreedomKind, coefficient: D) {
@@ -87,7 +90,11 @@ impl<D: Scalar> Row<D> {
         let [c, s] = direction;
         self.add(level, FreedomKind::FloorX, c * coefficient);
         self.add(level, FreedomKind::FloorY, s * coefficient);
-        self.add(level, FreedomKind::FloorTwist, (s * point.x - c * point.y) * coefficient);
+        self.add(
+            level,
+            FreedomKind::FloorTwist,
+            (s * point.x - c * point.y) * coefficient,
+        );
     }
 
     pub fn twist(&mut self, level: usize, coefficient: D) {
@@ -153,7 +160,10 @@ impl Reading<'_> {
         let (point, moves) = self.nodes[node];
         let (x, y) = (D::of(point.x, false), D::of(point.y, false));
         if moves {
-            Place { x: x + self.size::<D>(self.core_x), y: y + self.size::<D>(self.core_y) }
+            Place {
+                x: x + self.size::<D>(self.core_x),
+                y: y + self.size::<D>(self.core_y),
+            }
         } else {
             Place { x, y }
         }
@@ -185,6 +195,49 @@ impl Member {
         }
     }
 
+    /// Concrete of the member and where it sits in plan.
+    pub fn body<D: Scalar>(&self, reading: &Reading) -> Body<D> {
+        let line = |from: usize, to: usize, section: D| {
+            let (a, b) = (reading.place::<D>(from), reading.place::<D>(to));
+            let (length, _) = a.towards(b);
+            Body {
+                volume: section * length,
+                x: (a.x + b.x) * 0.5,
+                y: (a.y + b.y) * 0.5,
+                gyration_squared: length * length / 12.0,
+            }
+        };
+        let constant = Reading::constant::<D>;
+        match self {
+            Member::Panel(panel) => line(
+                panel.from,
+                panel.to,
+                reading.size::<D>(panel.thickness) * panel.height,
+            ),
+            Member::Column(column) => {
+                let place = reading.place::<D>(column.node);
+                let (a, b) = (column.width_x, column.width_y);
+                Body {
+                    volume: constant(a * b * column.height),
+                    x: place.x,
+                    y: place.y,
+                    gyration_squared: constant((a * a + b * b) / 12.0),
+                }
+            }
+            Member::Beam(beam) => line(beam.from, beam.to, constant(beam.breadth * beam.depth)),
+            Member::Link(link) => line(
+                link.from,
+                link.to,
+                link.breadth_of::<D>(reading) * reading.size::<D>(link.depth),
+            ),
+            Member::Arm(arm) => line(
+                arm.from,
+                arm.to,
+                reading.size::<D>(arm.thickness) * arm.depth(),
+            ),
+        }
+    }
+
     /// Sizes on which the stiffness of the rows depends, core offset apart.
     pub fn sizes(&self) -> Vec<usize> {
         match self {
@@ -207,6 +260,16 @@ impl Member {
     }
 }
 
+/// Concrete of one member: volume (m3), centroid relative to the reference point
+/// (m), and squared radius of gyration about the vertical through it (m2).
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Body<D> {
+    pub volume: D,
+    pub x: D,
+    pub y: D,
+    pub gyration_squared: D,
+}
+
 /// Stiffness against the deflection of one end of a prismatic piece whose other
 /// end is clamped, bending and shear in series: `1 / (span^3/(3 EI) + length/(GA))`.
 pub(crate) fn clamped_tip<D: Scalar>(span: D, bending: D, length: D, shear: D) -> D {
@@ -222,13 +285,22 @@ pub(crate) mod testing {
 
     /// Plan of test nodes, none moving, about the origin.
     pub fn fixed(points: &[(f64, f64)]) -> Vec<(Point, bool)> {
-        points.iter().map(|&(x, y)| (Point { x, y }, false)).collect()
+        points
+            .iter()
+            .map(|&(x, y)| (Point { x, y }, false))
+            .collect()
     }
 
     /// Worst strain of `rows` under a motion given freedom by freedom.
     pub fn worst_strain(rows: &[Row<f64>], motion: impl Fn(Freedom) -> f64) -> f64 {
         rows.iter()
-            .map(|row| row.terms.iter().map(|(freedom, b)| b * motion(*freedom)).sum::<f64>().abs())
+            .map(|row| {
+                row.terms
+                    .iter()
+                    .map(|(freedom, b)| b * motion(*freedom))
+                    .sum::<f64>()
+                    .abs()
+            })
             .fold(0.0, f64::max)
     }
 

@@ -65,7 +65,11 @@ impl Attachment {
             _ => 0.0,
         };
         // A straight wall split into several panels keeps the rectangle's 5/6.
-        let shear = if edges.contains(&Edge::Corner) { 1.0 } else { 5.0 / 6.0 };
+        let shear = if edges.contains(&Edge::Corner) {
+            1.0
+        } else {
+            5.0 / 6.0
+        };
         Attachment { bending, shear }
     }
 }
@@ -122,8 +126,13 @@ mod tests {
     #[test]
     fn a_rigid_motion_strains_nothing() {
         let nodes = fixed(&[(1.0, -2.0), (4.0, 2.0)]);
-        let reading =
-            Reading { sizes: &[0.3, 0.0, 0.0], seed: None, nodes: &nodes, core_x: 1, core_y: 2 };
+        let reading = Reading {
+            sizes: &[0.3, 0.0, 0.0],
+            seed: None,
+            nodes: &nodes,
+            core_x: 1,
+            core_y: 2,
+        };
         let rows = panel().rows::<f64>(&reading);
         let worst = worst_strain(&rows, rigid_motion(&nodes, &[6.4, 9.6], 0.1, 0.02, -0.03));
         assert!(worst < 1e-14, "{worst}");

@@ -42,7 +42,13 @@ impl Sizes {
         let belt_start = list.len();
         list.extend((0..tower.belts.places.len()).map(|place| Size::BeltThickness { place }));
         list.extend([Size::CoreX, Size::CoreY]);
-        Sizes { list, wall_start, link_start, outrigger_start, belt_start }
+        Sizes {
+            list,
+            wall_start,
+            link_start,
+            outrigger_start,
+            belt_start,
+        }
     }
 
     pub fn len(&self) -> usize {
