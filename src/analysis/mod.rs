@@ -2,6 +2,7 @@
 //!
 //! No verdicts here: this room must never know a limit.
 
+pub mod analyst;
 pub mod freedoms;
 pub mod gravity;
 pub mod inertia;
