@@ -8,3 +8,5 @@ pub mod model;
 pub mod elements;
 
 pub mod analysis;
+
+pub mod checks;
