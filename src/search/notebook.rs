@@ -99,10 +99,6 @@ impl<'a> Notebook<'a> {
         self.problem.rows()
     }
 
-    pub fn analyses(&self) -> usize {
-        self.analyses
-    }
-
     /// Best admissible feasible point.
     pub fn best(&self) -> Option<&Point> {
         self.best.map(|index| &self.points[index])
