@@ -10,3 +10,5 @@ pub mod elements;
 pub mod analysis;
 
 pub mod checks;
+
+pub mod design;
