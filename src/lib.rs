@@ -12,3 +12,5 @@ pub mod analysis;
 pub mod checks;
 
 pub mod design;
+
+pub mod schemes;

@@ -275,13 +275,6 @@ fn ten_bar_truss_reaches_the_published_weights() {
             let outcome = solve(&problem, &[start; 10], &precise(80), &mut Silent);
             let f = best_objective(&outcome);
             seen("ten-bar", outcome.analyses);
-            for t in &outcome.trace {
-                println!(
-                    "DBG {} {:.3} {:.2e} {:.2e}",
-                    t.analysis, t.objective, t.violation, t.worst
-                );
-            }
-            println!("DBG {:?}", outcome.stop);
             // The book gives five and six digits.
             assert!(
                 (f - weight).abs() < 2e-5 * weight,

@@ -33,6 +33,14 @@ impl LayoutProblem {
         }
     }
 
+    /// The same problem with modules left aside.
+    pub fn relaxed(mut self) -> Self {
+        for variable in &mut self.variables.list {
+            variable.lattice = None;
+        }
+        self
+    }
+
     pub fn map(&self) -> &Variables {
         &self.variables
     }

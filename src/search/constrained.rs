@@ -54,9 +54,10 @@ const SUFFICIENT: f64 = 0.1;
 const SWITCHING: f64 = 1.0;
 /// Largest curvature scale s_i.
 const MAX_CURVATURE: f64 = 10.0;
-/// Rounds of added tangents, and the error in q_j (radius = 1) that asks for one.
-const TANGENT_ROUNDS: usize = 5;
-const TANGENT_ERROR: f64 = 2e-3;
+/// Rounds of added tangents, and the error in q_j, relative to the largest q,
+/// that asks for one.
+const TANGENT_ROUNDS: usize = 8;
+const TANGENT_ERROR: f64 = 1e-2;
 /// Refused points whose linearisations stay in the program.
 const KEPT_REFUSALS: usize = 3;
 /// An elastic program that promises less than this share of the violation, per
@@ -71,6 +72,9 @@ const OBJECTIVE_WEIGHT: f64 = 1e-4;
 pub(crate) struct TrustRegion {
     start: Vec<f64>,
     tolerance: f64,
+    /// Violation that need not be worked off: zero, unless a lattice stage
+    /// follows, whose modules are coarser than that.
+    allowed_violation: f64,
     current: Option<usize>,
     radius: f64,
     filter: Vec<(f64, f64)>,
@@ -98,11 +102,13 @@ struct Expansion {
 }
 
 impl TrustRegion {
-    /// `tolerance`: relative gain in the objective not worth an analysis.
-    pub fn new(start: &[f64], tolerance: f64, initial_radius: f64) -> Self {
+    /// `tolerance`: relative gain in the objective not worth an analysis;
+    /// `allowed_violation`: sum of violations not worth one.
+    pub fn new(start: &[f64], tolerance: f64, allowed_violation: f64, initial_radius: f64) -> Self {
         TrustRegion {
             start: start.to_vec(),
             tolerance,
+            allowed_violation,
             current: None,
             radius: initial_radius,
             filter: Vec::new(),
@@ -133,7 +139,10 @@ impl TrustRegion {
             // The linearisations of refused points may be what holds it here.
             match self.propose(notebook, k, false) {
                 Some(bare) => proposal = bare,
-                None => return Some(Stop::Converged),
+                None => {
+                    self.radius *= 0.5;
+                    return None;
+                }
             }
         }
         if self.settled(notebook, k, &proposal) {
@@ -185,7 +194,7 @@ impl TrustRegion {
                     let evaluation = &notebook.points[index].evaluation;
                     self.current = Some(index);
                     self.scale = evaluation.objective.abs().max(1e-12);
-                    self.largest_violation = (1.5 * evaluation.violation()).max(1.0);
+                    self.largest_violation = (1.25 * evaluation.violation()).max(0.5);
                     return None;
                 }
                 Err(Refusal::Failed) => {}
@@ -200,18 +209,18 @@ impl TrustRegion {
     fn settled(&self, notebook: &Notebook, k: usize, proposal: &Proposal) -> bool {
         let evaluation = &notebook.points[k].evaluation;
         let violation = evaluation.violation();
-        let gain_limit = self.tolerance * self.scale;
+        let gain_limit = self.tolerance * evaluation.objective.abs();
         if proposal.reach * self.radius < 1e-10 {
             return true;
         }
         if proposal.elastic {
             violation - proposal.violation <= STATIONARY * violation * self.radius
-        } else if violation == 0.0 {
-            evaluation.objective - proposal.objective <= gain_limit
+        } else if violation <= self.allowed_violation {
+            (evaluation.objective - proposal.objective) <= gain_limit
         } else {
             let relaxed = notebook.relaxed().map(|point| &point.evaluation);
             relaxed.is_some_and(|best| {
-                best.feasible() && best.objective - proposal.objective <= gain_limit
+                best.feasible() && (best.objective - proposal.objective).abs() <= gain_limit
             })
         }
     }
@@ -245,6 +254,10 @@ impl TrustRegion {
             self.radius = (2.0 * self.radius).min(notebook.settings.max_radius);
         } else if f_type && real < 0.25 {
             self.radius *= 0.5;
+        } else {
+            // A step well inside: the tangents of the next squares are laid
+            // closer, where the steps now are.
+            self.radius *= (4.0 * proposal.reach).clamp(0.05, 1.0);
         }
         self.current = Some(trial);
         self.refused.clear();
@@ -332,7 +345,7 @@ impl TrustRegion {
                     let origin = &notebook.points[refused].x;
                     let same = notebook.linearisations.iter();
                     for other in same.filter(|l| l.point == refused && l.id == reported[i].id) {
-                        let (row, upper) = frame.softened(variables, other, origin);
+                        let (row, upper) = frame.softened(variables, other, origin, other.kappa);
                         let (terms, upper) = frame.row(&row, upper - aim);
                         if !elastic || slack.is_some() {
                             limit(&mut program, terms, upper, 1.0, slack);
@@ -520,15 +533,21 @@ impl Squares {
             let Answer::Found { values, .. } = program.solve(0) else {
                 return best;
             };
-            let mut exact = true;
-            for j in 0..x_k.len() {
-                if let (Some(q), Some(y)) = (self.columns[j], frame.columns[j]) {
-                    let width = frame.upper[j] - frame.lower[j];
-                    let t = (frame.lower[j] + width * values[y] - x_k[j]) / self.rho[j];
-                    if t * t - values[q] > TANGENT_ERROR {
-                        exact = false;
-                        self.tangent(program, frame, x_k, j, t);
+            let steps: Vec<f64> = (0..x_k.len())
+                .map(|j| match frame.columns[j] {
+                    Some(y) => {
+                        let width = frame.upper[j] - frame.lower[j];
+                        (frame.lower[j] + width * values[y] - x_k[j]) / self.rho[j]
                     }
+                    None => 0.0,
+                })
+                .collect();
+            let largest = steps.iter().map(|t| t * t).fold(1e-8, f64::max);
+            let mut exact = true;
+            for (j, &t) in steps.iter().enumerate() {
+                if self.columns[j].is_some_and(|q| t * t - values[q] > TANGENT_ERROR * largest) {
+                    exact = false;
+                    self.tangent(program, frame, x_k, j, t);
                 }
             }
             best = Some(values);

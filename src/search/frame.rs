@@ -120,14 +120,15 @@ impl Frame {
         variables: &[Variable],
         linearisation: &Linearisation,
         origin: &[f64],
+        kappa: f64,
     ) -> (Vec<f64>, f64) {
         let mut upper = -linearisation.value;
         let mut coefficients = linearisation.gradient.clone();
         for (j, a) in coefficients.iter_mut().enumerate() {
             upper += *a * origin[j];
             let range = variables[j].upper - variables[j].lower;
-            if linearisation.kappa > 0.0 && range > 0.0 {
-                let weight = linearisation.kappa / (range * range);
+            if kappa > 0.0 && range > 0.0 {
+                let weight = kappa / (range * range);
                 let (l, u, p) = (self.lower[j], self.upper[j], origin[j]);
                 *a -= weight * (l + u - 2.0 * p);
                 upper += weight * (p * p - l * u);

@@ -45,12 +45,12 @@ pub fn solve(
         let share = settings.continuous_share * settings.max_analyses as f64;
         notebook.limit = (share.ceil() as usize).clamp(1, settings.max_analyses);
     }
-    let tolerance = if lattices {
-        settings.relaxed_tolerance
+    let (tolerance, allowed_violation) = if lattices {
+        (settings.relaxed_tolerance, settings.relaxed_tolerance)
     } else {
-        settings.objective_tolerance
+        (settings.objective_tolerance, 0.0)
     };
-    let method = TrustRegion::new(start, tolerance, settings.initial_radius);
+    let method = TrustRegion::new(start, tolerance, allowed_violation, settings.initial_radius);
     let (stop, mut notebook) = bridge::run(method, notebook);
     notebook.limit = settings.max_analyses;
     let ended = matches!(

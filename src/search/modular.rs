@@ -32,6 +32,8 @@
 //! elastic master and infeasible points); J. Viswanathan and I. E. Grossmann
 //! 1990, Comput. Chem. Eng. 14 (softened rows for nonconvex functions).
 
+use std::collections::BTreeMap;
+
 use super::frame::{Frame, module_value, modules_within};
 use super::linear_program::{Answer, LinearProgram};
 use super::notebook::{Linearisation, Notebook, Refusal, distance_squared, rows_hold, slope};
@@ -39,8 +41,6 @@ use super::outcome::Stop;
 use super::problem::Variable;
 use super::progress::Stage;
 
-/// Weight of a violated cut beside a violated constraint in elastic programs.
-const CUT_WEIGHT: f64 = 0.1;
 /// Weight of the objective, relative, in elastic programs.
 const OBJECTIVE_WEIGHT: f64 = 1e-4;
 /// A smaller sum of violations is sought only if smaller by this share.
@@ -56,6 +56,7 @@ pub(crate) struct LatticeSearch {
     /// Where the continuous stage ended.
     relaxed: Vec<f64>,
     region: Region,
+    trust: Trust,
     /// All variables lie on lattices, so that a point can be shut out.
     pure: bool,
 }
@@ -65,6 +66,27 @@ enum Region {
     AroundRelaxed,
     AroundBest,
     Whole,
+}
+
+/// How far the linearisations of nonconvex constraints are believed.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Trust {
+    /// Each is softened by what contradicted it.
+    Own,
+    /// Each is softened by the most that contradicted any of its constraint.
+    Shared,
+    /// Twice that.
+    Doubled,
+}
+
+impl Trust {
+    fn kappa(self, notebook: &Notebook, linearisation: &Linearisation) -> f64 {
+        match self {
+            Trust::Own => linearisation.kappa,
+            Trust::Shared => notebook.largest_kappa(linearisation.id),
+            Trust::Doubled => 2.0 * notebook.largest_kappa(linearisation.id),
+        }
+    }
 }
 
 enum Proposal {
@@ -77,6 +99,7 @@ impl LatticeSearch {
         LatticeSearch {
             relaxed: relaxed.to_vec(),
             region: Region::AroundRelaxed,
+            trust: Trust::Own,
             pure: variables
                 .iter()
                 .all(|v| v.lattice.is_some() || v.lower == v.upper),
@@ -115,7 +138,16 @@ impl LatticeSearch {
                 self.region = Region::Whole;
                 None
             }
-            (Proposal::Nothing, Region::Whole) => self.poll(notebook),
+            (Proposal::Nothing, Region::Whole) => {
+                let stop = self.poll(notebook)?;
+                let doubtful = notebook.linearisations.iter().any(|l| l.kappa > 0.0);
+                self.trust = match (stop, self.trust) {
+                    (Stop::NoBetterFound, Trust::Own) if doubtful => Trust::Shared,
+                    (Stop::NoBetterFound, Trust::Shared) if doubtful => Trust::Doubled,
+                    _ => return Some(stop),
+                };
+                None
+            }
         }
     }
 
@@ -136,8 +168,9 @@ impl LatticeSearch {
             elastic,
             self.delta(notebook),
         );
-        possible &= add_linearisations(&mut program, &frame, notebook, elastic, self.pure);
-        possible &= add_cuts(&mut program, &frame, notebook, elastic);
+        possible &= add_linearisations(&mut program, &frame, notebook, elastic, self);
+        // A cut speaks of feasible points only, not of how much others violate.
+        possible &= elastic || add_cuts(&mut program, &frame, notebook);
         if self.pure {
             possible &= shut_out(&mut program, &frame, notebook);
         }
@@ -262,6 +295,7 @@ impl LatticeSearch {
         }
         let limit = point.evaluation.objective - self.delta(notebook);
         let slack = notebook.settings.poll_slack;
+        let allowed = point.evaluation.violation();
         let mut ranked: Vec<(f64, f64, Vec<f64>)> = Vec::new();
         for change in moves {
             let mut x = point.x.clone();
@@ -283,14 +317,9 @@ impl LatticeSearch {
             {
                 continue;
             }
-            let worst = predicted_worst(notebook, &x);
-            let allowed = if feasible {
-                0.0
-            } else {
-                point.evaluation.worst()
-            };
-            if worst <= allowed + slack {
-                ranked.push((worst.max(0.0), objective, x));
+            let violation = predicted_violation(notebook, self.trust, &x);
+            if violation <= allowed + slack {
+                ranked.push((violation, objective, x));
             }
         }
         ranked.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.total_cmp(&b.1)));
@@ -320,7 +349,7 @@ fn add_objective(
     let mut distinct: Vec<(Vec<f64>, f64)> = Vec::new();
     for linearisation in notebook.objectives.iter().rev() {
         let origin = &notebook.points[linearisation.point].x;
-        let row = frame.softened(variables, linearisation, origin);
+        let row = frame.softened(variables, linearisation, origin, linearisation.kappa);
         if distinct.len() < MAX_OBJECTIVES && !distinct.iter().any(|known| same_row(known, &row)) {
             distinct.push(row);
         }
@@ -382,16 +411,22 @@ fn add_linearisations(
     frame: &Frame,
     notebook: &Notebook,
     elastic: bool,
-    pure: bool,
+    search: &LatticeSearch,
 ) -> bool {
     let variables = notebook.variables();
-    let aim = if pure { 0.0 } else { notebook.settings.aim };
+    let trust = search.trust;
+    let aim = if search.pure {
+        0.0
+    } else {
+        notebook.settings.aim
+    };
     let mut rows: Vec<(f64, usize, Vec<f64>, f64)> = notebook
         .linearisations
         .iter()
         .map(|linearisation| {
             let origin = &notebook.points[linearisation.point].x;
-            let (a, upper) = frame.softened(variables, linearisation, origin);
+            let kappa = trust.kappa(notebook, linearisation);
+            let (a, upper) = frame.softened(variables, linearisation, origin, kappa);
             let middle: f64 = (0..a.len())
                 .map(|j| a[j] * 0.5 * (frame.lower[j] + frame.upper[j]))
                 .sum();
@@ -433,12 +468,7 @@ fn add_linearisations(
     possible
 }
 
-fn add_cuts(
-    program: &mut LinearProgram,
-    frame: &Frame,
-    notebook: &Notebook,
-    elastic: bool,
-) -> bool {
+fn add_cuts(program: &mut LinearProgram, frame: &Frame, notebook: &Notebook) -> bool {
     let variables = notebook.variables();
     notebook.cuts.iter().all(|cut| {
         let sizes = cut.coefficients.iter().zip(variables);
@@ -446,20 +476,12 @@ fn add_cuts(
             .map(|(a, v)| (a * (v.upper - v.lower)).abs())
             .fold(0.0, f64::max);
         if size == 0.0 {
-            return elastic || cut.lower <= 0.0;
+            return cut.lower <= 0.0;
         }
         let a: Vec<f64> = cut.coefficients.iter().map(|a| -a / size).collect();
-        let (mut terms, upper) = frame.row(&a, -cut.lower / size);
+        let (terms, upper) = frame.row(&a, -cut.lower / size);
         // A cut is exact up to the rounding of whoever made it.
         let upper = upper + 1e-9;
-        if elastic {
-            let most: f64 = terms
-                .iter()
-                .map(|&(c, a)| (a * program.columns[c].upper).max(0.0))
-                .sum();
-            let slack = program.column(CUT_WEIGHT, 0.0, (most - upper).max(0.0));
-            terms.push((slack, -1.0));
-        }
         program.row(&terms, upper)
     })
 }
@@ -515,24 +537,24 @@ fn forbidden(coefficients: &[f64], lower: f64, x: &[f64]) -> bool {
 
 /// Largest of all softened linearisations of the objective at x.
 fn predicted_objective(notebook: &Notebook, x: &[f64]) -> f64 {
-    let all = notebook
-        .objectives
-        .iter()
-        .map(|l| softened_value(notebook, l, x));
+    let all = notebook.objectives.iter();
+    let all = all.map(|l| softened_value(notebook, l, l.kappa, x));
     all.fold(f64::NEG_INFINITY, f64::max)
 }
 
-/// Largest of all softened linearisations of the constraints at x.
-fn predicted_worst(notebook: &Notebook, x: &[f64]) -> f64 {
-    let all = notebook
-        .linearisations
-        .iter()
-        .map(|l| softened_value(notebook, l, x));
-    all.fold(f64::NEG_INFINITY, f64::max)
+/// Sum of violations at x by the softened linearisations.
+fn predicted_violation(notebook: &Notebook, trust: Trust, x: &[f64]) -> f64 {
+    let mut worst: BTreeMap<usize, f64> = BTreeMap::new();
+    for l in &notebook.linearisations {
+        let value = softened_value(notebook, l, trust.kappa(notebook, l), x);
+        let worst = worst.entry(l.id).or_insert(0.0);
+        *worst = worst.max(value);
+    }
+    worst.values().sum()
 }
 
-fn softened_value(notebook: &Notebook, linearisation: &Linearisation, x: &[f64]) -> f64 {
-    let origin = &notebook.points[linearisation.point].x;
-    linearisation.value + slope(&linearisation.gradient, origin, x)
-        - linearisation.kappa * distance_squared(notebook.variables(), origin, x)
+fn softened_value(notebook: &Notebook, l: &Linearisation, kappa: f64, x: &[f64]) -> f64 {
+    let origin = &notebook.points[l.point].x;
+    l.value + slope(&l.gradient, origin, x)
+        - kappa * distance_squared(notebook.variables(), origin, x)
 }

@@ -37,6 +37,7 @@ pub(crate) struct Notebook<'a> {
     /// Enumerations need none, and would spend their time on them.
     pub remember_linearisations: bool,
     known: BTreeMap<Vec<u64>, Option<usize>>,
+    largest_kappa: BTreeMap<usize, f64>,
     analyses: usize,
     failures: usize,
     best: Option<usize>,
@@ -82,6 +83,7 @@ impl<'a> Notebook<'a> {
             cuts: Vec::new(),
             remember_linearisations: true,
             known: BTreeMap::new(),
+            largest_kappa: BTreeMap::new(),
             analyses: 0,
             failures: 0,
             best: None,
@@ -126,6 +128,11 @@ impl<'a> Notebook<'a> {
     pub fn visited(&self) -> impl Iterator<Item = Vec<f64>> {
         let decode = |key: &Vec<u64>| key.iter().map(|&bits| f64::from_bits(bits)).collect();
         self.known.keys().map(decode)
+    }
+
+    /// Largest weak-convexity constant of any linearisation of a constraint.
+    pub fn largest_kappa(&self, id: usize) -> f64 {
+        self.largest_kappa.get(&id).copied().unwrap_or(0.0)
     }
 
     /// The point has been analysed, with or without success.
@@ -199,6 +206,10 @@ impl<'a> Notebook<'a> {
         let index = self.points.len();
         if self.remember_linearisations {
             self.linearise(x, &evaluation, index);
+            for l in &self.linearisations {
+                let largest = self.largest_kappa.entry(l.id).or_insert(0.0);
+                *largest = largest.max(l.kappa);
+            }
         }
         let (objective, violation) = (evaluation.objective, evaluation.violation());
         let worst = evaluation.worst();
