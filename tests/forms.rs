@@ -1,0 +1,29 @@
+//! Both forms of the tower file, read and printed.
+
+use std::path::Path;
+
+use corewright::model::read::{Form, TowerFile, read_tower};
+
+fn read(name: &str) -> TowerFile {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR"))
+        .join("tests/towers")
+        .join(name);
+    read_tower(&path).unwrap_or_else(|faults| panic!("{faults}"))
+}
+
+#[test]
+fn the_annotated_format_is_a_valid_tower() {
+    let file = read("annotated.toml");
+    assert_eq!(file.form, Form::Full);
+    assert_eq!(file.warnings, Vec::<String>::new());
+    let tower = &file.tower;
+    assert_eq!(tower.storey_count(), 45);
+    assert!((tower.height() - (44.0 * 3.2 + 4.5)).abs() < 1e-9);
+    assert_eq!(tower.wall_groups[0].zones[1].given, 0.35);
+    assert_eq!(tower.wall_groups[2].zones[0].vary.unwrap().min, 0.25);
+    // Standard gravity, ISO 80000-3: (5 + 0.25 x 2) kPa over 40 m x 30 m.
+    let mass = 5500.0 * 1200.0 / 9.80665;
+    assert!((tower.storeys[0].floor.mass.mass - mass).abs() < 1e-6);
+    assert_eq!(tower.storeys[44].floor.mass.mass, 1.2e6);
+    assert_eq!(tower.lateral_cases[0].forces[43], 420e3);
+}
