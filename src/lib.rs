@@ -14,3 +14,5 @@ pub mod checks;
 pub mod design;
 
 pub mod schemes;
+
+pub mod report;
