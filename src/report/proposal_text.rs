@@ -70,7 +70,7 @@ pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String
                 .collect();
             format!(" The nearest scheme falls short in {}.", short.join("; "))
         }
-        None => " No scheme could be analysed.".to_owned(),
+        None => " No scheme came of it.".to_owned(),
     };
     match status {
         Status::Feasible => {
@@ -140,10 +140,10 @@ fn comparison(report: &ProposalReport) -> String {
         ("Ty s", number),
         ("Ttwist s", number),
         ("ratio", number),
-        ("governed by", Column::Text),
+        ("governed by", Column::Title),
         ("used", number),
-        ("changes", number),
-        ("floor lost m2", number),
+        ("steps", number),
+        ("floor m2", number),
     ]);
     let row = |rank: String, passes: bool, added: f64, results: &Results, changes: String, lost| {
         let governing = results.governing_check();
@@ -226,8 +226,28 @@ fn strongest(sensitivities: &[SensitivitySummary]) -> String {
             .abs()
             .total_cmp(&a.1.ratio_to_smaller.abs())
     });
+    let free = sensitivities
+        .iter()
+        .filter(|sensitivity| sensitivity.per_m3.is_none());
+    let mut moves = String::new();
+    for sensitivity in free {
+        // Slopes hold for small steps; 100 mm keeps the digits readable.
+        let by_100_mm = |slope: f64| signed_significant(100.0 * slope, 2);
+        let slopes = &sensitivity.per_mm;
+        push(
+            &mut moves,
+            &format!(
+                "  {}, 100 mm more: ratio {}, Tx {} s, Ty {} s, Ttwist {} s",
+                sensitivity.size,
+                by_100_mm(slopes.ratio_to_smaller),
+                by_100_mm(slopes.period_x_s),
+                by_100_mm(slopes.period_y_s),
+                by_100_mm(slopes.period_twist_s)
+            ),
+        );
+    }
     if costly.is_empty() {
-        return String::new();
+        return moves;
     }
     let number = Column::Number;
     let mut table = table(&[
@@ -248,5 +268,5 @@ fn strongest(sensitivities: &[SensitivitySummary]) -> String {
             fixed(10.0 * sensitivity.concrete_m3_per_mm, 2),
         ]);
     }
-    lines(&table)
+    lines(&table) + &moves
 }

@@ -9,6 +9,7 @@ use crate::analysis::analyst::{AnalysisError, Response};
 use crate::analysis::inertia::{Masses, Part};
 use crate::checks::periods::Fundamental;
 use crate::checks::{Check, all_pass, governing};
+use crate::model::sizes::Size;
 use crate::model::tower::{StoreyRange, Tower};
 use crate::schemes::conflict::Conflict;
 use crate::schemes::run::{Coverage, Settings};
@@ -546,7 +547,7 @@ pub struct SensitivitySummary {
     pub size: String,
     pub concrete_m3_per_mm: f64,
     pub per_mm: Slopes,
-    /// None for a size that costs no concrete.
+    /// None for the core's offset, which is not paid in concrete.
     pub per_m3: Option<Slopes>,
 }
 
@@ -559,9 +560,6 @@ pub struct Slopes {
     /// Worst storey drift of each lateral case, over height.
     pub storey_drift: Vec<f64>,
 }
-
-/// Concrete per metre of a size below which it is called free, m3/m.
-const FREE: f64 = 1e-6;
 
 impl SensitivitySummary {
     pub fn of(sensitivity: &Sensitivity) -> Self {
@@ -576,11 +574,14 @@ impl SensitivitySummary {
                 .map(|slope| slope / amount)
                 .collect(),
         };
+        // A core that moves costs next to nothing: links and arms grow a little.
+        let moves = matches!(sensitivity.size, Size::CoreX | Size::CoreY);
+        let costs = !moves && sensitivity.concrete != 0.0;
         SensitivitySummary {
             size: sensitivity.name.clone(),
             concrete_m3_per_mm: sensitivity.concrete / 1e3,
             per_mm: per(1e3),
-            per_m3: (sensitivity.concrete.abs() > FREE).then(|| per(sensitivity.concrete)),
+            per_m3: costs.then(|| per(sensitivity.concrete)),
         }
     }
 }
