@@ -9,7 +9,9 @@ mod common;
 use std::f64::consts::PI;
 
 use common::*;
+use corewright::analysis::analyst::Analyst;
 use corewright::analysis::modes::Class;
+use corewright::model::sizes::Sizes;
 use corewright::model::tower::*;
 
 const HEIGHT: f64 = 180.0;
@@ -225,6 +227,62 @@ fn tip_mass_and_stepped_stiffness() {
     }
 }
 
+/// Closed-form optima of zone thicknesses: the uniform tower's period, or top
+/// drift, at the least concrete. The published shares must keep period and drift,
+/// add up to the published volume, and make the program's own gradient per
+/// volume the same in every zone (the optimality criterion; Berke and Venkayya
+/// 1974, from memory).
+#[test]
+fn optimal_zones_keep_the_period_and_equalise_its_gradient() {
+    // Least sum of four equal zones' EI with the uniform cantilever's frequency,
+    // mass not following: 0.646969 of the uniform volume (convex program, solved).
+    let zones = [1.3277, 0.8157, 0.3679, 0.0765];
+    assert!((zones.iter().sum::<f64>() / 4.0 - 0.646969).abs() < 5e-5);
+    let found = in_the_limit(12, [2, 4], |n| {
+        let tower = bending_tower(n, &zones);
+        let sizes = Sizes::of(&tower);
+        let mut analyst = Analyst::new(&tower);
+        let response = analyst.analyse(&sizes.values(&tower)).expect("an analysis");
+        let first = response.modes.first(Class::X).expect("a mode");
+        let modes = [&response.modes.list[first]];
+        let gradient = &analyst.eigenvalue_gradients(&response.masses, &modes)[0];
+        let mut values = vec![dimensionless(&tower)[0]];
+        values.extend((1..4).map(|zone| gradient[zone] / gradient[0]));
+        values
+    });
+    assert_close(&found[..1], &[3.516015], 5e-5, "frequency");
+    // Shares are given to four decimals, so the slimmest zone knows its own to 0.1 %.
+    assert_close(&found[1..], &[1.0, 1.0, 1.0], 3e-3, "gradients");
+}
+
+#[test]
+fn optimal_zones_keep_the_top_drift_and_equalise_its_gradient() {
+    // Uniform load: EI shares proportional to sqrt(a_i/L_i), a_i the zone's part of
+    // the virtual work of the uniform tower, z^2 z/2 from the top: closed form,
+    // 0.668511 of the uniform volume for four zones (Lagrange).
+    let work = |low: f64, high: f64| (high.powi(4) - low.powi(4)) / 8.0;
+    let parts: Vec<f64> = (0..4)
+        .map(|zone| work(0.75 - 0.25 * zone as f64, 1.0 - 0.25 * zone as f64))
+        .collect();
+    let roots: f64 = parts.iter().map(|part| part.sqrt()).sum();
+    let zones: Vec<f64> = parts.iter().map(|part| 8.0 * part.sqrt() * roots).collect();
+    assert!((zones.iter().sum::<f64>() / 4.0 - 0.668511).abs() < 1e-6);
+    let load = 20e3;
+    let found = in_the_limit(12, [2, 4], |n| {
+        let mut tower = bending_tower(n, &zones);
+        tower.lateral_cases = vec![case(Direction::X, Action::Wind, uniform_load(&tower, load))];
+        let sizes = Sizes::of(&tower);
+        let mut analyst = Analyst::new(&tower);
+        let response = analyst.analyse(&sizes.values(&tower)).expect("an analysis");
+        let gradient = &analyst.drift_gradients(0, &[analyst.top_probe(0, 0)])[0];
+        let mut values = vec![response.cases[0].top_drift[0]];
+        values.extend((1..4).map(|zone| gradient[zone] / gradient[0]));
+        values
+    });
+    let uniform = load * HEIGHT.powi(3) / (8.0 * E * INERTIA);
+    assert_close(&found, &[uniform, 1.0, 1.0, 1.0], 2e-5, "drift, gradients");
+}
+
 #[test]
 fn root_spring_of_a_bending_cantilever() {
     // kappa = k H/EI: 1 + cos x cosh x = (x/kappa)(sin x cosh x - cos x sinh x)
@@ -419,6 +477,27 @@ fn equal_sways_are_turned_to_the_axes() {
             assert!(pair[0].shares[0] > 1.0 - 1e-8, "{:?}", pair[0].shares);
             assert!(pair[1].shares[1] > 1.0 - 1e-8, "{:?}", pair[1].shares);
         }
+    }
+}
+
+#[test]
+fn three_equal_periods_are_told_apart() {
+    // W = 1, no eccentricity: sways and twist have one period (the table above at
+    // e/r = 0), and any mixture of them is a mode; each must come out pure.
+    let r = 8.0;
+    let mut tower = pier_tower(5, 1.0, r * r, Point { x: 0.0, y: 0.0 });
+    let arm = r / 2.0_f64.sqrt();
+    for side in [-1.0, 1.0] {
+        pier(&mut tower, side * arm, 0.0, PI / 2.0, 0.5);
+        pier(&mut tower, 0.0, side * arm, 0.0, 0.5);
+    }
+    let modes = analyse(&tower).modes.list;
+    assert!(off(modes[2].eigenvalue, modes[0].eigenvalue) < 1e-7);
+    let classes = [0, 1, 2].map(|mode| modes[mode].class);
+    assert_eq!(classes, [Class::X, Class::Y, Class::Twist]);
+    for (mode, share) in modes.iter().zip(0..3) {
+        assert!(mode.shares[share] > 1.0 - 1e-6, "{:?}", mode.shares);
+        assert!(!mode.coupled);
     }
 }
 

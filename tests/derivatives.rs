@@ -352,3 +352,35 @@ fn stresses_follow_the_core_as_its_tributary_areas_do() {
         );
     }
 }
+
+fn assert_same(one: &Tower, other: &Tower) {
+    let (one, other) = (quantities(&analyse(one)), quantities(&analyse(other)));
+    assert_eq!(one.len(), other.len());
+    for ((name, a), (_, b)) in one.iter().zip(&other) {
+        assert!((a - b).abs() < 1e-9 * a.abs().max(1e-4), "{name}: {a} {b}");
+    }
+}
+
+#[test]
+fn the_reference_point_changes_no_result() {
+    for base in [Base::Fixed, tilting_base(), vertical_springs(2e9)] {
+        let tower = everything(StructureMass::All, base);
+        let mut other = tower.clone();
+        other.reference = Point { x: 9.0, y: -7.0 };
+        assert_same(&tower, &other);
+    }
+}
+
+#[test]
+fn a_moved_core_is_a_core_with_moved_nodes() {
+    let tower = everything(StructureMass::All, tilting_base());
+    let mut other = tower.clone();
+    for node in &mut other.nodes {
+        if node.moves_with_core {
+            node.position.x += other.core.x;
+            node.position.y += other.core.y;
+        }
+    }
+    (other.core.x, other.core.y) = (0.0, 0.0);
+    assert_same(&tower, &other);
+}
