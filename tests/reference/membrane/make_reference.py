@@ -15,7 +15,7 @@ import scipy
 import skfem
 
 from membrane_model import (
-    Arm, Case, Column, Link, Panel, displacements, floor_stiffness, modes,
+    Arm, Case, Column, Link, Panel, displacements, floor_stiffness, modes, without_poisson_coupling,
 )
 
 HERE = pathlib.Path(__file__).parent
@@ -219,7 +219,6 @@ def results(case):
                   for i, (a, b) in enumerate(zip(moved, before[3]))]
     if max(period_change[:3]) > 1e-3:
         raise SystemExit(f"{case.name}: first periods still change by {max(period_change[:3])}")
-    names = ("X", "Y", "twist")
     record = {
         "case": case.name,
         "title": case.title,
@@ -255,28 +254,45 @@ def results(case):
             "period_change_from_coarser": [number(c) for c in period_change],
             "tip_change_from_coarser": [number(c) for c in tip_change],
         },
-        "modes": [
-            {"period_s": number(period), "direction": names[int(np.argmax(share))],
-             "share_x": number(round(share[0], 9)), "share_y": number(round(share[1], 9)),
-             "share_twist": number(round(share[2], 9))}
-            for period, share in found
-        ],
+        "modes": mode_records(found),
+        "load_cases": load_case_records(case, moved),
+    }
+    # The same mesh without Poisson coupling: the floors then restrain nothing but what
+    # beam and panel theory also restrain, so idealisations can be compared more closely.
+    K, _ = floor_stiffness(case, *MESHES[-1], material=without_poisson_coupling)
+    record["without_poisson_coupling"] = {
+        "modes": mode_records(modes(case, K)),
+        "load_cases": load_case_records(case, displacements(case, K)),
     }
     if case.name == "cantilever_walls":
         record["beam_theory"] = lumped_timoshenko(case)
-    record["load_cases"] = {}
+    return record
+
+
+def mode_records(found):
+    names = ("X", "Y", "twist")
+    return [
+        {"period_s": number(period), "direction": names[int(np.argmax(share))],
+         "share_x": number(round(share[0], 9)), "share_y": number(round(share[1], 9)),
+         "share_twist": number(round(share[2], 9))}
+        for period, share in found
+    ]
+
+
+def load_case_records(case, moved):
+    records = {}
     loads = (("uniform X", "force_kn_per_storey", case.force_kn),
              ("uniform Y", "force_kn_per_storey", case.force_kn),
              ("uniform torque", "torque_knm_per_storey", case.torque_knm))
     for (name, key, load), floors in zip(loads, moved):
         scale = np.abs(floors).max()
         clean = [[0.0 if abs(v) < 1e-8 * scale else number(v) for v in row] for row in floors]
-        record["load_cases"][name] = {
+        records[name] = {
             key: load,
             "tip": dict(zip(("ux_m", "uy_m", "theta_rad"), clean[-1])),
             "floors_ux_m_uy_m_theta_rad": clean,
         }
-    return record
+    return records
 
 
 def plain(value):

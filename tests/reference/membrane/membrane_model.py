@@ -182,13 +182,21 @@ def graded(stops, size, fine, finest):
 
 @BilinearForm
 def plane_stress(u, v, w):
-    """Plane-stress strain energy per unit volume times thickness; w.E, w.nu, w.t."""
+    """Virtual work of plane stress times thickness; w.E, w.nu, w.t."""
     e, f = sym_grad(u), sym_grad(v)
     c = w.E / (1 - w.nu**2)
     return w.t * c * ((1 - w.nu) * ddot(e, f) + w.nu * trace(e) * trace(f))
 
 
-def storey_matrix(case, storey, size, finest, st_venant):
+@BilinearForm
+def without_poisson_coupling(u, v, w):
+    """The same with no lateral strain from vertical stress; E and G = E/(2 (1 + nu)) kept."""
+    e, f = sym_grad(u), sym_grad(v)
+    G = w.E / (2 * (1 + w.nu))
+    return w.t * (w.E * (e[0, 0] * f[0, 0] + e[1, 1] * f[1, 1]) + 4 * G * e[0, 1] * f[0, 1])
+
+
+def storey_matrix(case, storey, size, finest, st_venant, material):
     """Stiffness of one storey, condensed to its two levels.
 
     Returns (S, keys): S is symmetric, ordered as floor below (ux, uy, theta),
@@ -242,7 +250,7 @@ def storey_matrix(case, storey, size, finest, st_venant):
         thickness = thickness[keep]
         basis = Basis(mesh, ElementVector(ElementQuad2()))
         t = basis.with_element(ElementQuad0()).interpolate(thickness)
-        K = plane_stress.assemble(basis, t=t, E=case.elastic_modulus, nu=case.poisson_ratio)
+        K = material.assemble(basis, t=t, E=case.elastic_modulus, nu=case.poisson_ratio)
         blocks.append(K)
 
         horizontal = np.zeros(basis.N, dtype=bool)
@@ -360,7 +368,7 @@ def assert_rigid_motions_cost_nothing(case, S, keys):
     assert np.abs(force).max() < 1e-8 * scale, np.abs(force).max() / scale
 
 
-def floor_stiffness(case, size, finest, st_venant=True):
+def floor_stiffness(case, size, finest, st_venant=True, material=plane_stress):
     """Stiffness on the 3 N floor freedoms (ux, uy, theta of levels 1..N in turn).
 
     Returns (K, freedoms of one storey's mesh)."""
@@ -369,7 +377,7 @@ def floor_stiffness(case, size, finest, st_venant=True):
         kind = (tuple(p.thickness[storey] for p in case.panels),
                 tuple(storey in a.storeys for a in case.arms))
         if kind not in cache:
-            cache[kind] = storey_matrix(case, storey, size, finest, st_venant)
+            cache[kind] = storey_matrix(case, storey, size, finest, st_venant, material)
         S, these, total = cache[kind]
         assert keys is None or keys == these
         keys, meshed = these, max(meshed, total)
