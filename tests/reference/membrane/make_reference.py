@@ -136,6 +136,19 @@ def cases():
         columns=[Column(f"k{i}", f"p{i}", 1.0, 1.0) for i in (1, 2, 3, 4)],
         **plan(30, 24),
     )
+    n = 24
+    yield Case(
+        "deep_outrigger", "Core 9 x 7 m with a door and two arms two storeys deep", n, 3.4,
+        {"sw": (-5, -3), "d1": (-1.5, -3), "d2": (0.5, -3), "se": (4, -3),
+         "ne": (4, 4), "nw": (-5, 4), "p1": (-14, 4), "p2": (14, 4)},
+        walls(n, {"south west": ("sw", "d1", 0.4), "south east": ("d2", "se", 0.4),
+                  "east": ("se", "ne", 0.35), "north": ("nw", "ne", 0.4),
+                  "west": ("sw", "nw", 0.35)}),
+        links=[Link("south door", "d1", "d2", 0.8)],
+        arms=[Arm("nw", "p1", (14, 15), 0.4), Arm("ne", "p2", (14, 15), 0.4)],
+        columns=[Column("k1", "p1", 1.1, 1.1), Column("k2", "p2", 1.1, 1.1)],
+        **plan(30, 22, centre=(0.0, 0.3)),
+    )
     n = 12
     yield Case(
         "narrow_piers", "Two pairs of 2 m piers coupled over 2 m openings, and two plain walls",

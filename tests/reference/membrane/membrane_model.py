@@ -17,7 +17,8 @@ line in plan, z up) of nine-node quadrilaterals (`ElementQuad2` of scikit-fem).
   on the relative twist of consecutive floors.
 
 One storey is condensed to the vertical displacements at its two floor levels
-and the two times three floor freedoms (static condensation, exact). Storeys are
+and the two times three floor freedoms (static condensation, exact); where an arm
+goes on into the next storey, both displacements of its cut are kept too. Storeys are
 then stacked and all vertical displacements condensed, which leaves the 3 N
 floor freedoms. Mass sits on those only, so nothing is lost for the modes.
 
@@ -199,8 +200,9 @@ def without_poisson_coupling(u, v, w):
 def storey_matrix(case, storey, size, finest, st_venant, material):
     """Stiffness of one storey, condensed to its two levels.
 
-    Returns (S, keys): S is symmetric, ordered as floor below (ux, uy, theta),
-    floor above, then vertical displacements below and above in the order `keys`.
+    Returns (S, keys, count): S is symmetric, ordered as floor below (ux, uy, theta),
+    floor above, then the kept displacements `keys`, (level 0 or 1, key): key is
+    ("node", id) or ("line", line, s) for w, ("chord", line, s) for u along an arm's cut.
     """
     h = case.height
     depths = sorted({h - l.depth for l in case.links})
@@ -263,17 +265,24 @@ def storey_matrix(case, storey, size, finest, st_venant, material):
             s, z = (round(v, ROUND) for v in basis.doflocs[:, dof])
             in_wall = any(w.s0 - 1e-6 <= s <= w.s1 + 1e-6 for w in walls)
             level = 0 if z == 0 else 1 if z == round(h, ROUND) else None
+            goes_on = level is not None and any(
+                a.s0 - 1e-6 <= s <= a.s1 + 1e-6 and storey + (1 if level else -1) in a.member.storeys
+                for a in strips if a.kind == "arm"
+            )
             if horizontal[dof]:
                 if in_wall and level is not None:
                     # u = c ux + d uy + theta (d (x - x0) - c (y - y0)); s drops out.
                     entries = [(3 * level, c), (3 * level + 1, d), (3 * level + 2, lever)]
                 else:
-                    entries = [(column_of(("u", number, s, z)), 1.0)]
+                    col = column_of(("u", number, s, z))
+                    entries = [(col, 1.0)]
+                    if goes_on:
+                        boundary[(level, ("chord", number, s))] = col
             else:
                 key = ("node", node_at[s]) if s in node_at else ("line", number, s)
                 col = vertical(key, z)
                 entries = [(col, 1.0)]
-                if level is not None and (in_wall or s in node_at):
+                if level is not None and (in_wall or s in node_at or goes_on):
                     boundary[(level, key)] = col
             for col, value in entries:
                 rows.append(local + dof)
@@ -317,8 +326,8 @@ def storey_matrix(case, storey, size, finest, st_venant, material):
     total = 6 + len(key_index)
     T = scipy.sparse.csr_matrix((vals, (rows, cols)), shape=(local, total))
     K = (T.T @ scipy.sparse.block_diag(blocks, format="csr") @ T).tocsr()
-    keys = sorted({key for _, key in boundary}, key=str)
-    outer = list(range(6)) + [boundary[(level, key)] for level in (0, 1) for key in keys]
+    keys = sorted(boundary, key=str)
+    outer = list(range(6)) + [boundary[key] for key in keys]
     mask = np.ones(total, dtype=bool)
     mask[outer] = False
     inner = np.nonzero(mask)[0]
@@ -343,26 +352,26 @@ def storey_matrix(case, storey, size, finest, st_venant, material):
     return S, keys, total
 
 
-def position(case, key):
-    """Plan position of a kept vertical displacement."""
-    if key[0] == "node":
-        return case.nodes[key[1]]
-    line = lines_of(case)[key[1]]
-    return tuple(np.add(line.origin, np.multiply(key[2], line.direction)))
-
-
 def assert_rigid_motions_cost_nothing(case, S, keys):
     """The six rigid motions of a free storey must produce no force."""
     x0, y0 = case.reference
-    h, n = case.height, len(keys)
-    xy = np.array([position(case, key) for key in keys])
-    motions = np.zeros((6, 6 + 2 * n))
+    lines, motions = lines_of(case), np.zeros((6, len(S)))
     for axis in range(3):
         motions[axis, [axis, axis + 3]] = 1.0
-    motions[3, 6:] = 1.0
     for axis in range(2):  # tilt: ux = z, w = -(x - x0)
-        motions[4 + axis, 3 + axis] = h
-        motions[4 + axis, 6:] = -np.tile(xy[:, axis] - (x0, y0)[axis], 2)
+        motions[4 + axis, 3 + axis] = case.height
+    for at, (level, key) in enumerate(keys, 6):
+        if key[0] == "node":
+            x, y = case.nodes[key[1]]
+        else:
+            line = lines[key[1]]
+            x, y = np.add(line.origin, np.multiply(key[2], line.direction))
+        if key[0] == "chord":
+            c, d = line.direction
+            motions[:3, at] = c, d, d * (x - x0) - c * (y - y0)
+            motions[4:, at] = c * case.height * level, d * case.height * level
+        else:
+            motions[3:, at] = 1.0, -(x - x0), -(y - y0)
     force = S @ motions.T
     scale = np.abs(S).max() * np.abs(motions).max()
     assert np.abs(force).max() < 1e-8 * scale, np.abs(force).max() / scale
@@ -372,40 +381,41 @@ def floor_stiffness(case, size, finest, st_venant=True, material=plane_stress):
     """Stiffness on the 3 N floor freedoms (ux, uy, theta of levels 1..N in turn).
 
     Returns (K, freedoms of one storey's mesh)."""
-    cache, matrices, keys, meshed = {}, [], None, 0
-    for storey in range(case.storeys):
+    N, cache, matrices, meshed = case.storeys, {}, [], 0
+    for storey in range(N):
         kind = (tuple(p.thickness[storey] for p in case.panels),
-                tuple(storey in a.storeys for a in case.arms))
+                tuple(s in a.storeys for a in case.arms for s in (storey - 1, storey, storey + 1)))
         if kind not in cache:
             cache[kind] = storey_matrix(case, storey, size, finest, st_venant, material)
-        S, these, total = cache[kind]
-        assert keys is None or keys == these
-        keys, meshed = these, max(meshed, total)
-        matrices.append(S)
-    n, N = len(keys), case.storeys
-    m = 3 * N
-    band = np.zeros((2 * n, n * N))  # lower form for solveh_banded
-    K_wf, K_ff = np.zeros((n * N, m)), np.zeros((m, m))
-    K_ww = {}
-    for k, S in enumerate(matrices):
-        floors = [(np.arange(0, 3), k - 1), (np.arange(3, 6), k)]
-        walls = [(np.arange(6, 6 + n), k - 1), (np.arange(6 + n, 6 + 2 * n), k)]
-        for rows, i in floors:
-            for cols, j in floors:
-                if min(i, j) >= 0:
-                    K_ff[3 * i:3 * i + 3, 3 * j:3 * j + 3] += S[np.ix_(rows, cols)]
-        for rows, i in walls:
-            for cols, j in floors:
-                if min(i, j) >= 0:
-                    K_wf[n * i:n * i + n, 3 * j:3 * j + 3] += S[np.ix_(rows, cols)]
-            for cols, j in walls:
-                if min(i, j) >= 0 and i >= j:
-                    K_ww.setdefault((i, j), np.zeros((n, n)))[:] += S[np.ix_(rows, cols)]
-    for (i, j), block in K_ww.items():
-        for col in range(n):
-            first = col if i == j else 0
-            offset = n * i + first - (n * j + col)
-            band[offset:offset + n - first, n * j + col] = block[first:, col]
+        S, keys, total = cache[kind]
+        meshed = max(meshed, total)
+        matrices.append((S, keys))
+    # Kept displacements numbered level by level; None for floor freedoms and the fixed base.
+    number = {}
+    for k, (_, keys) in enumerate(matrices):
+        for level, key in keys:
+            if k + level > 0:
+                number[(k + level, key)] = None
+    for index, name in enumerate(sorted(number, key=lambda name: (name[0], str(name[1])))):
+        number[name] = index
+    n = len(number)
+    K_ff, K_wf = np.zeros((3 * N, 3 * N)), np.zeros((n, 3 * N))
+    entries, width = [], 0
+    for k, (S, keys) in enumerate(matrices):
+        floors = [(i, 3 * (k - 1) + i) for i in range(6) if k > 0 or i >= 3]
+        walls = [(i, number[(k + level, key)]) for i, (level, key) in enumerate(keys, 6)
+                 if k + level > 0]
+        local_f, global_f = np.array(floors).T
+        local_w, global_w = np.array(walls).T
+        K_ff[np.ix_(global_f, global_f)] += S[np.ix_(local_f, local_f)]
+        K_wf[np.ix_(global_w, global_f)] += S[np.ix_(local_w, local_f)]
+        entries.append((global_w, S[np.ix_(local_w, local_w)]))
+        width = max(width, np.ptp(global_w))
+    band = np.zeros((width + 1, n))  # lower form
+    for at, block in entries:
+        row, col = np.meshgrid(at, at, indexing="ij")
+        lower = row >= col
+        band[row[lower] - col[lower], col[lower]] += block[lower]
     K = K_ff - K_wf.T @ scipy.linalg.solveh_banded(band, K_wf, lower=True)
     return 0.5 * (K + K.T), meshed
 
