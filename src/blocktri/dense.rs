@@ -1,7 +1,7 @@
 //! Dense matrices and their kernels: the one door to the linear-algebra library.
 //!
 //! Only this file names faer (El Kazdadi, faer 0.24). What the room needs of it
-//! is eight small functions on column-major slices, so that another library can
+//! is ten small functions on column-major slices, so that another library can
 //! take its place by rewriting this file alone. Kernels always run sequentially:
 //! whoever wants more threads runs more factorisations beside one another.
 
@@ -115,6 +115,18 @@ pub fn multiply_into(a: &Dense, b: &Dense, out: &mut Dense) {
     );
 }
 
+/// `out = a' b`.
+pub(super) fn transposed_multiply_into(a: &Dense, b: &Dense, out: &mut Dense) {
+    matmul(
+        out.view_mut(),
+        Accum::Replace,
+        a.view().transpose(),
+        b.view(),
+        1.0,
+        Par::Seq,
+    );
+}
+
 /// Scratch memory of [`cholesky_lower`].
 pub(super) struct CholeskyScratch(MemBuffer);
 
@@ -158,6 +170,11 @@ pub(super) fn solve_lower(l: &Dense, x: &mut [f64], columns: usize) {
 pub(super) fn solve_lower_transposed(l: &Dense, x: &mut [f64], columns: usize) {
     let x = MatMut::from_column_major_slice_mut(x, l.rows, columns);
     solve_upper_triangular_in_place(l.view().transpose(), x, Par::Seq);
+}
+
+/// `x <- x L^-T`.
+pub(super) fn solve_lower_from_right(l: &Dense, x: &mut Dense) {
+    solve_lower_triangular_in_place(l.view(), x.view_mut().transpose_mut(), Par::Seq);
 }
 
 /// `out <- out - a x`.
