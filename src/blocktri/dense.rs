@@ -7,7 +7,7 @@
 
 use faer::dyn_stack::{MemBuffer, MemStack};
 use faer::linalg::cholesky::llt::factor::{
-    LltError, LltRegularization, cholesky_in_place, cholesky_in_place_scratch,
+    LltError, LltParams, LltRegularization, cholesky_in_place, cholesky_in_place_scratch,
 };
 use faer::linalg::evd::{self, ComputeEigenvectors};
 use faer::linalg::matmul::matmul;
@@ -15,7 +15,7 @@ use faer::linalg::matmul::triangular::{self, BlockStructure};
 use faer::linalg::triangular_solve::{
     solve_lower_triangular_in_place, solve_upper_triangular_in_place,
 };
-use faer::{Accum, MatMut, MatRef, Par};
+use faer::{Accum, Auto, MatMut, MatRef, Par};
 
 /// Dense matrix, column by column.
 #[derive(Debug, Clone, PartialEq, Default)]
@@ -136,9 +136,18 @@ impl CholeskyScratch {
         CholeskyScratch(MemBuffer::new(cholesky_in_place_scratch::<f64>(
             size,
             Par::Seq,
-            Default::default(),
+            cholesky_parameters().into(),
         )))
     }
+}
+
+/// Smaller pieces than the library's own choice: half the time at 50 rows, and
+/// no slower at 150.
+fn cholesky_parameters() -> LltParams {
+    let mut parameters = <LltParams as Auto<f64>>::auto();
+    parameters.recursion_threshold = 32;
+    parameters.block_size = 64;
+    parameters
 }
 
 /// Overwrites the lower triangle of `a` by its Cholesky factor; the strict upper
@@ -153,7 +162,7 @@ pub(super) fn cholesky_lower(a: &mut Dense, scratch: &mut CholeskyScratch) -> Re
         LltRegularization::default(),
         Par::Seq,
         MemStack::new(&mut scratch.0),
-        Default::default(),
+        cholesky_parameters().into(),
     ) {
         Ok(_) => Ok(()),
         Err(LltError::NonPositivePivot { index }) => Err(index),

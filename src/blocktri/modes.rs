@@ -69,9 +69,9 @@ pub fn modes_from_flexibility(
     let (values, vectors) = largest(&congruent(flexibility, &roots), count)?;
     let mut eigenvalues = Vec::with_capacity(count);
     let mut shapes = Dense::zeros(size, count);
-    for j in 0..count {
+    for (j, value) in values.iter().enumerate() {
         let psi = vectors.col(j);
-        eigenvalues.push(1.0 / values[j]);
+        eigenvalues.push(1.0 / value);
         let sign = sign(psi);
         let groups = shapes.col_mut(j).chunks_exact_mut(3);
         for ((phi, psi), l) in groups.zip(psi.chunks_exact(3)).zip(&roots) {
@@ -144,8 +144,8 @@ fn root(m: &[[f64; 3]; 3]) -> Option<[[f64; 3]; 3]> {
     for i in 0..3 {
         for j in 0..=i {
             let scale = (m[i][i] * m[j][j]).sqrt();
-            // Negated, so that NaN fails.
-            if !((m[i][j] - m[j][i]).abs() <= 1e-9 * scale) {
+            let skew = (m[i][j] - m[j][i]).abs();
+            if skew.is_nan() || scale.is_nan() || skew > 1e-9 * scale {
                 return None;
             }
             let rest = m[i][j] - (0..j).map(|k| l[i][k] * l[j][k]).sum::<f64>();
@@ -170,10 +170,10 @@ fn congruent(f: &Dense, roots: &[[[f64; 3]; 3]]) -> Dense {
             // F_ab L_b, then L_a' times that.
             let mut product = [[0.0; 3]; 3];
             for (j, column) in product.iter_mut().enumerate() {
-                for k in j..3 {
+                for (k, row) in right.iter().enumerate().skip(j) {
                     let source = &f.col(3 * b + k)[3 * a..3 * a + 3];
                     for (entry, value) in column.iter_mut().zip(source) {
-                        *entry += value * right[k][j];
+                        *entry += value * row[j];
                     }
                 }
             }
