@@ -24,8 +24,10 @@
 //! neighbours of the best point (one module in one variable, or one up and
 //! another down) are polled, if no cut forbids them and the linear models do so
 //! by a small amount at most: what remains to distrust is the model, not the
-//! program. With nothing feasible at hand the same is done elastically, for the
-//! sum of violations in place of the objective.
+//! program. If any constraint has shown itself nonconvex, an elastic program
+//! then names, again and again, the better point that the models forbid by
+//! least, until that is more than is worth doubting. With nothing feasible at
+//! hand the sum of violations is sought to be less in place of the objective.
 //!
 //! Sources: M. A. Duran and I. E. Grossmann 1986, Math. Prog. 36 (outer
 //! approximation); R. Fletcher and S. Leyffer 1994, Math. Prog. 66 (its
@@ -48,24 +50,36 @@ const LESS_VIOLATION: f64 = 1e-3;
 /// With continuous variables about, gains below this relative amount are left.
 const MIXED_IMPROVEMENT: f64 = 1e-4;
 /// Points shut out by binary columns in one program, at most.
-const MAX_SHUT_OUT: usize = 20;
+const MAX_SHUT_OUT: usize = 40;
 /// Objective linearisations in one program, at most.
 const MAX_OBJECTIVES: usize = 30;
 
 pub(crate) struct LatticeSearch {
     /// Where the continuous stage ended.
     relaxed: Vec<f64>,
-    region: Region,
+    ask: Ask,
     trust: Trust,
+    /// Likely points tried since the last improvement.
+    tries: usize,
     /// All variables lie on lattices, so that a point can be shut out.
     pure: bool,
 }
 
+/// What is asked next.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-enum Region {
+enum Ask {
+    /// A better point near the continuous optimum.
     AroundRelaxed,
+    /// A better point near the best one.
     AroundBest,
+    /// A better point anywhere.
     Whole,
+    /// A point that violates less, while none is feasible.
+    LessViolation,
+    /// The neighbours.
+    Poll,
+    /// The better point that the models forbid by least.
+    Likely,
 }
 
 /// How far the linearisations of nonconvex constraints are believed.
@@ -89,17 +103,13 @@ impl Trust {
     }
 }
 
-enum Proposal {
-    Point(Vec<f64>),
-    Nothing,
-}
-
 impl LatticeSearch {
     pub fn new(variables: &[Variable], relaxed: &[f64]) -> Self {
         LatticeSearch {
             relaxed: relaxed.to_vec(),
-            region: Region::AroundRelaxed,
+            ask: Ask::AroundRelaxed,
             trust: Trust::Own,
+            tries: 0,
             pure: variables
                 .iter()
                 .all(|v| v.lattice.is_some() || v.lower == v.upper),
@@ -108,58 +118,70 @@ impl LatticeSearch {
 
     /// One integer program with its analysis, or one poll; tells when it is over.
     pub fn step(&mut self, notebook: &mut Notebook) -> Option<Stop> {
-        let feasible = notebook.best().is_some();
-        let proposal = match self.propose(notebook, false) {
-            Proposal::Nothing if self.region == Region::Whole && !feasible => {
-                self.propose(notebook, true)
-            }
-            proposal => proposal,
+        if self.ask == Ask::Poll {
+            return match self.poll(notebook) {
+                Some(Stop::NoBetterFound) => self.go_on(notebook),
+                other => other,
+            };
+        }
+        let Some(x) = self.propose(notebook) else {
+            return self.go_on(notebook);
         };
-        match (proposal, self.region) {
-            (Proposal::Point(x), region) => match notebook.analyse(&x, Stage::Modular) {
-                Ok(index) => {
-                    if region == Region::Whole && notebook.best_index() == Some(index) {
-                        self.region = Region::AroundBest;
-                    }
-                    None
+        match notebook.analyse(&x, Stage::Modular) {
+            Ok(index) if notebook.best_index() == Some(index) => {
+                if self.ask != Ask::AroundRelaxed {
+                    self.ask = Ask::AroundBest;
                 }
-                // A failed point is shut out like any other.
-                Err(refusal) => stop_of(refusal),
-            },
-            (Proposal::Nothing, Region::AroundRelaxed) => {
-                self.region = if feasible {
-                    Region::AroundBest
-                } else {
-                    Region::Whole
-                };
+                (self.trust, self.tries) = (Trust::Own, 0);
                 None
             }
-            (Proposal::Nothing, Region::AroundBest) => {
-                self.region = Region::Whole;
-                None
-            }
-            (Proposal::Nothing, Region::Whole) => {
-                let stop = self.poll(notebook)?;
-                let doubtful = notebook.linearisations.iter().any(|l| l.kappa > 0.0);
-                self.trust = match (stop, self.trust) {
-                    (Stop::NoBetterFound, Trust::Own) if doubtful => Trust::Shared,
-                    (Stop::NoBetterFound, Trust::Shared) if doubtful => Trust::Doubled,
-                    _ => return Some(stop),
-                };
-                None
-            }
+            // Its linearisation, or its being shut out, forbids it from now on.
+            Ok(_) => None,
+            Err(refusal) => stop_of(refusal),
         }
     }
 
-    /// The integer program of the present region.
-    fn propose(&self, notebook: &Notebook, elastic: bool) -> Proposal {
-        let nothing = Proposal::Nothing;
+    /// The present question has no answer (any more): to the next, or the end.
+    fn go_on(&mut self, notebook: &Notebook) -> Option<Stop> {
+        let feasible = notebook.best().is_some();
+        let doubtful = notebook.linearisations.iter().any(|l| l.kappa > 0.0);
+        self.ask = match self.ask {
+            Ask::AroundRelaxed if feasible => Ask::AroundBest,
+            Ask::AroundRelaxed | Ask::AroundBest => Ask::Whole,
+            Ask::Whole if !feasible => Ask::LessViolation,
+            Ask::Whole | Ask::LessViolation => Ask::Poll,
+            Ask::Poll if feasible && doubtful => Ask::Likely,
+            Ask::Poll if doubtful && self.trust != Trust::Doubled => {
+                self.trust = match self.trust {
+                    Trust::Own => Trust::Shared,
+                    Trust::Shared | Trust::Doubled => Trust::Doubled,
+                };
+                Ask::Whole
+            }
+            Ask::Poll | Ask::Likely => {
+                return Some(if notebook.points.is_empty() {
+                    Stop::NothingAdmissible
+                } else {
+                    Stop::NoBetterFound
+                });
+            }
+        };
+        None
+    }
+
+    /// The integer program of the present question.
+    fn propose(&mut self, notebook: &Notebook) -> Option<Vec<f64>> {
+        if self.ask == Ask::Likely {
+            self.tries += 1;
+            if self.tries > notebook.settings.max_poll {
+                return None;
+            }
+        }
+        let elastic = matches!(self.ask, Ask::LessViolation | Ask::Likely);
         let variables = notebook.variables();
         let (lower, upper) = self.bounds(notebook);
         let mut program = LinearProgram::default();
-        let Some(frame) = Frame::lattice(&mut program, variables, &lower, &upper) else {
-            return nothing;
-        };
+        let frame = Frame::lattice(&mut program, variables, &lower, &upper)?;
         let mut possible = frame.add_rows(&mut program, notebook.rows());
         possible &= add_objective(
             &mut program,
@@ -170,34 +192,29 @@ impl LatticeSearch {
         );
         possible &= add_linearisations(&mut program, &frame, notebook, elastic, self);
         // A cut speaks of feasible points only, not of how much others violate.
-        possible &= elastic || add_cuts(&mut program, &frame, notebook);
+        possible &= self.ask == Ask::LessViolation || add_cuts(&mut program, &frame, notebook);
         if self.pure {
             possible &= shut_out(&mut program, &frame, notebook);
         }
         if !possible {
-            return nothing;
+            return None;
         }
         match program.solve(notebook.settings.node_limit) {
             Answer::Found { values, .. } => {
                 let x = frame.point(variables, &values);
-                let fresh = !notebook.knows(&x);
-                if fresh && notebook.admissible(&x) {
-                    Proposal::Point(x)
-                } else {
-                    nothing
-                }
+                (!notebook.knows(&x) && notebook.admissible(&x)).then_some(x)
             }
-            Answer::Infeasible | Answer::Failed => nothing,
+            Answer::Infeasible | Answer::Failed => None,
         }
     }
 
-    /// Box of the present region.
+    /// Box of the present question.
     fn bounds(&self, notebook: &Notebook) -> (Vec<f64>, Vec<f64>) {
         let variables = notebook.variables();
-        let centre = match self.region {
-            Region::AroundRelaxed => Some(&self.relaxed),
-            Region::AroundBest => notebook.best().map(|best| &best.x),
-            Region::Whole => None,
+        let centre = match self.ask {
+            Ask::AroundRelaxed => Some(&self.relaxed),
+            Ask::AroundBest => notebook.best().map(|best| &best.x),
+            Ask::Whole | Ask::LessViolation | Ask::Poll | Ask::Likely => None,
         };
         let Some(centre) = centre else {
             return variables.iter().map(|v| (v.lower, v.upper)).unzip();
@@ -237,11 +254,7 @@ impl LatticeSearch {
     fn poll(&mut self, notebook: &mut Notebook) -> Option<Stop> {
         let feasible = notebook.best_index();
         let Some(base) = feasible.or(notebook.least_infeasible_index()) else {
-            return Some(if notebook.points.is_empty() {
-                Stop::NothingAdmissible
-            } else {
-                Stop::NoBetterFound
-            });
+            return Some(Stop::NoBetterFound);
         };
         let candidates = self.neighbours(notebook, base, feasible.is_some());
         for x in candidates.into_iter().take(notebook.settings.max_poll) {
@@ -252,10 +265,13 @@ impl LatticeSearch {
                         None => notebook.least_infeasible_index() == Some(index),
                     };
                     if better {
-                        self.region = Region::AroundBest;
-                        if notebook.best().is_none() {
-                            self.region = Region::Whole;
-                        }
+                        let now_feasible = notebook.best().is_some();
+                        self.ask = if now_feasible {
+                            Ask::AroundBest
+                        } else {
+                            Ask::LessViolation
+                        };
+                        (self.trust, self.tries) = (Trust::Own, 0);
                         return None;
                     }
                 }
@@ -460,10 +476,16 @@ fn add_linearisations(
         }
         possible &= program.row(&terms, upper);
     }
-    if let (true, Some(least)) = (elastic, notebook.least_infeasible()) {
+    let most = match (search.ask, notebook.least_infeasible()) {
+        (Ask::LessViolation, Some(least)) => {
+            Some((1.0 - LESS_VIOLATION) * least.evaluation.violation())
+        }
+        (Ask::Likely, _) => Some(notebook.settings.doubt),
+        _ => None,
+    };
+    if let (true, Some(most)) = (elastic, most) {
         let all: Vec<(usize, f64)> = slacks.iter().map(|&(_, slack)| (slack, 1.0)).collect();
-        let less = (1.0 - LESS_VIOLATION) * least.evaluation.violation();
-        possible &= program.row(&all, less);
+        possible &= program.row(&all, most);
     }
     possible
 }
