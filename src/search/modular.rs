@@ -19,6 +19,11 @@
 //! chord over the region. An analysed point that such softened rows no longer
 //! forbid is shut out by binary columns: some n_j must differ.
 //!
+//! A linearisation says too little of a curved constraint, so that proposals
+//! tend to fail by a little, over and over when there are many variables. After
+//! every miss one proposal therefore keeps a margin to each constraint, as large
+//! as the model's error was lately; only programs without margins prove anything.
+//!
 //! The region is first a few modules around the continuous optimum, then around
 //! the best point, then the whole lattice. When all three give nothing, the
 //! neighbours of the best point (one module in one variable, or one up and
@@ -34,7 +39,7 @@
 //! elastic master and infeasible points); J. Viswanathan and I. E. Grossmann
 //! 1990, Comput. Chem. Eng. 14 (softened rows for nonconvex functions).
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, VecDeque};
 
 use super::frame::{Frame, module_value, modules_within};
 use super::linear_program::{Answer, LinearProgram};
@@ -49,8 +54,10 @@ const OBJECTIVE_WEIGHT: f64 = 1e-4;
 const LESS_VIOLATION: f64 = 1e-3;
 /// With continuous variables about, gains below this relative amount are left.
 const MIXED_IMPROVEMENT: f64 = 1e-4;
-/// Points shut out by binary columns in one program, at most.
-const MAX_SHUT_OUT: usize = 40;
+/// Binary columns that shut points out of one program, at most.
+const MAX_BINARIES: usize = 240;
+/// Proposals whose errors make the margins.
+const ERRORS_KEPT: usize = 4;
 /// Objective linearisations in one program, at most.
 const MAX_OBJECTIVES: usize = 30;
 
@@ -61,6 +68,10 @@ pub(crate) struct LatticeSearch {
     trust: Trust,
     /// Likely points tried since the last improvement.
     tries: usize,
+    /// Proposals in a row that did not improve.
+    misses: usize,
+    /// What the latest proposals violated, by constraint: the model's error.
+    errors: VecDeque<BTreeMap<usize, f64>>,
     /// All variables lie on lattices, so that a point can be shut out.
     pure: bool,
 }
@@ -110,6 +121,8 @@ impl LatticeSearch {
             ask: Ask::AroundRelaxed,
             trust: Trust::Own,
             tries: 0,
+            misses: 0,
+            errors: VecDeque::new(),
             pure: variables
                 .iter()
                 .all(|v| v.lattice.is_some() || v.lower == v.upper),
@@ -124,7 +137,23 @@ impl LatticeSearch {
                 other => other,
             };
         }
-        let Some(x) = self.propose(notebook) else {
+        // After each miss, one proposal with margins: a safe step to a feasible
+        // point is worth more than another that only just fails.
+        let cautious = self.misses % 2 == 1 && !self.elastic();
+        let mut proposal = None;
+        if cautious {
+            proposal = self.propose(notebook, &self.margins());
+        }
+        if proposal.is_none() {
+            if self.ask == Ask::Likely {
+                self.tries += 1;
+                if self.tries > notebook.settings.max_poll {
+                    return self.go_on(notebook);
+                }
+            }
+            proposal = self.propose(notebook, &BTreeMap::new());
+        }
+        let Some(x) = proposal else {
             return self.go_on(notebook);
         };
         match notebook.analyse(&x, Stage::Modular) {
@@ -132,11 +161,21 @@ impl LatticeSearch {
                 if self.ask != Ask::AroundRelaxed {
                     self.ask = Ask::AroundBest;
                 }
-                (self.trust, self.tries) = (Trust::Own, 0);
+                (self.trust, self.tries, self.misses) = (Trust::Own, 0, 0);
                 None
             }
             // Its linearisation, or its being shut out, forbids it from now on.
-            Ok(_) => None,
+            Ok(index) => {
+                self.misses += 1;
+                let constraints = notebook.points[index].evaluation.constraints.iter();
+                let violated = constraints.filter(|c| c.value > 0.0);
+                self.errors
+                    .push_back(violated.map(|c| (c.id, c.value)).collect());
+                if self.errors.len() > ERRORS_KEPT {
+                    self.errors.pop_front();
+                }
+                None
+            }
             Err(refusal) => stop_of(refusal),
         }
     }
@@ -169,15 +208,24 @@ impl LatticeSearch {
         None
     }
 
-    /// The integer program of the present question.
-    fn propose(&mut self, notebook: &Notebook) -> Option<Vec<f64>> {
-        if self.ask == Ask::Likely {
-            self.tries += 1;
-            if self.tries > notebook.settings.max_poll {
-                return None;
-            }
+    /// Constraints may be violated in the present question, at a cost.
+    fn elastic(&self) -> bool {
+        matches!(self.ask, Ask::LessViolation | Ask::Likely)
+    }
+
+    /// Largest recent error of the model of each constraint.
+    fn margins(&self) -> BTreeMap<usize, f64> {
+        let mut margins: BTreeMap<usize, f64> = BTreeMap::new();
+        for (&id, &error) in self.errors.iter().flatten() {
+            let margin = margins.entry(id).or_insert(0.0);
+            *margin = margin.max(error);
         }
-        let elastic = matches!(self.ask, Ask::LessViolation | Ask::Likely);
+        margins
+    }
+
+    /// The integer program of the present question.
+    fn propose(&self, notebook: &Notebook, margins: &BTreeMap<usize, f64>) -> Option<Vec<f64>> {
+        let elastic = self.elastic();
         let variables = notebook.variables();
         let (lower, upper) = self.bounds(notebook);
         let mut program = LinearProgram::default();
@@ -190,7 +238,7 @@ impl LatticeSearch {
             elastic,
             self.delta(notebook),
         );
-        possible &= add_linearisations(&mut program, &frame, notebook, elastic, self);
+        possible &= add_linearisations(&mut program, &frame, notebook, self, margins);
         // A cut speaks of feasible points only, not of how much others violate.
         possible &= self.ask == Ask::LessViolation || add_cuts(&mut program, &frame, notebook);
         if self.pure {
@@ -204,7 +252,7 @@ impl LatticeSearch {
                 let x = frame.point(variables, &values);
                 (!notebook.knows(&x) && notebook.admissible(&x)).then_some(x)
             }
-            Answer::Infeasible | Answer::Failed => None,
+            Answer::Infeasible | Answer::Undecided | Answer::Failed => None,
         }
     }
 
@@ -271,7 +319,7 @@ impl LatticeSearch {
                         } else {
                             Ask::LessViolation
                         };
-                        (self.trust, self.tries) = (Trust::Own, 0);
+                        (self.trust, self.tries, self.misses) = (Trust::Own, 0, 0);
                         return None;
                     }
                 }
@@ -426,10 +474,11 @@ fn add_linearisations(
     program: &mut LinearProgram,
     frame: &Frame,
     notebook: &Notebook,
-    elastic: bool,
     search: &LatticeSearch,
+    margins: &BTreeMap<usize, f64>,
 ) -> bool {
     let variables = notebook.variables();
+    let elastic = search.elastic();
     let trust = search.trust;
     let aim = if search.pure {
         0.0
@@ -454,7 +503,8 @@ fn add_linearisations(
     let mut slacks: Vec<(usize, usize)> = Vec::new();
     let mut possible = true;
     for (_, id, a, upper) in rows {
-        let (mut terms, upper) = frame.row(&a, upper - aim);
+        let margin = margins.get(&id).copied().unwrap_or(0.0);
+        let (mut terms, upper) = frame.row(&a, upper - aim - margin);
         if elastic {
             let most: f64 = terms
                 .iter()
@@ -511,20 +561,19 @@ fn add_cuts(program: &mut LinearProgram, frame: &Frame, notebook: &Notebook) -> 
 /// Forbids analysed (or failed) lattice points that no row forbids yet: the sum
 /// of the distances |n_j - p_j| is at least one.
 fn shut_out(program: &mut LinearProgram, frame: &Frame, notebook: &Notebook) -> bool {
-    let mut count = 0;
+    let own = program.columns.len();
     // The frame's columns come first in the program.
     let known = frame.columns.iter().flatten().count();
     for p in notebook.visited() {
         let inside =
             (0..p.len()).all(|j| p[j] >= frame.lower[j] - 1e-9 && p[j] <= frame.upper[j] + 1e-9);
-        if !inside || count >= MAX_SHUT_OUT || !notebook.admissible(&p) {
+        if !inside || program.columns.len() - own >= MAX_BINARIES || !notebook.admissible(&p) {
             continue;
         }
         let values = frame.values(&p, program.columns.len());
         if program.forbids(&values, known) {
             continue;
         }
-        count += 1;
         let mut terms: Vec<(usize, f64)> = Vec::new();
         let mut least = 1.0;
         for &column in frame.columns.iter().flatten() {

@@ -42,7 +42,7 @@ pub struct Settings {
     /// without an improvement; default 40.
     pub max_poll: usize,
     /// Node limit of each integer program (a count, not a time, so that the
-    /// answer does not depend on the machine); default 2000.
+    /// answer does not depend on the machine); default 300.
     pub node_limit: usize,
     /// Most linearisations in one program, those nearest to governing first;
     /// default 400.
@@ -65,7 +65,7 @@ impl Default for Settings {
             poll_slack: 0.02,
             doubt: 0.1,
             max_poll: 40,
-            node_limit: 2000,
+            node_limit: 300,
             max_linearisations: 400,
         }
     }
