@@ -600,7 +600,7 @@ pub(crate) fn nearest_by_rows(notebook: &Notebook, x: &[f64]) -> Option<Vec<f64>
     }
     match possible.then(|| program.solve(0))? {
         Answer::Found { values, .. } => Some(frame.point(variables, &values)),
-        Answer::Infeasible | Answer::Failed => None,
+        Answer::Infeasible | Answer::Undecided | Answer::Failed => None,
     }
 }
 

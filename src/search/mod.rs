@@ -51,7 +51,7 @@ pub fn solve(
         (settings.objective_tolerance, 0.0)
     };
     let method = TrustRegion::new(start, tolerance, allowed_violation, settings.initial_radius);
-    let (stop, mut notebook) = bridge::run(method, notebook);
+    let (stop, reached, mut notebook) = bridge::run(method, notebook);
     notebook.limit = settings.max_analyses;
     let ended = matches!(
         stop,
@@ -60,9 +60,7 @@ pub fn solve(
     if !lattices || ended {
         return notebook.outcome(stop);
     }
-    let relaxed = notebook
-        .relaxed()
-        .map_or_else(|| start.to_vec(), |point| point.x.clone());
+    let relaxed = reached.map_or_else(|| start.to_vec(), |k| notebook.points[k].x.clone());
     let mut method = LatticeSearch::new(problem.variables(), &relaxed);
     loop {
         if let Some(stop) = method.step(&mut notebook) {

@@ -19,20 +19,27 @@
 //! chord over the region. An analysed point that such softened rows no longer
 //! forbid is shut out by binary columns: some n_j must differ.
 //!
+//! A linearisation says too little of a curved constraint, so that proposals
+//! tend to fail by a little, over and over when there are many variables. After
+//! every miss one proposal therefore keeps a margin to each constraint, as large
+//! as the model's error was lately; only programs without margins prove anything.
+//!
 //! The region is first a few modules around the continuous optimum, then around
 //! the best point, then the whole lattice. When all three give nothing, the
 //! neighbours of the best point (one module in one variable, or one up and
 //! another down) are polled, if no cut forbids them and the linear models do so
 //! by a small amount at most: what remains to distrust is the model, not the
-//! program. With nothing feasible at hand the same is done elastically, for the
-//! sum of violations in place of the objective.
+//! program. If any constraint has shown itself nonconvex, an elastic program
+//! then names, again and again, the better point that the models forbid by
+//! least, until that is more than is worth doubting. With nothing feasible at
+//! hand the sum of violations is sought to be less in place of the objective.
 //!
 //! Sources: M. A. Duran and I. E. Grossmann 1986, Math. Prog. 36 (outer
 //! approximation); R. Fletcher and S. Leyffer 1994, Math. Prog. 66 (its
 //! elastic master and infeasible points); J. Viswanathan and I. E. Grossmann
 //! 1990, Comput. Chem. Eng. 14 (softened rows for nonconvex functions).
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, VecDeque};
 
 use super::frame::{Frame, module_value, modules_within};
 use super::linear_program::{Answer, LinearProgram};
@@ -47,25 +54,43 @@ const OBJECTIVE_WEIGHT: f64 = 1e-4;
 const LESS_VIOLATION: f64 = 1e-3;
 /// With continuous variables about, gains below this relative amount are left.
 const MIXED_IMPROVEMENT: f64 = 1e-4;
-/// Points shut out by binary columns in one program, at most.
-const MAX_SHUT_OUT: usize = 20;
+/// Binary columns that shut points out of one program, at most.
+const MAX_BINARIES: usize = 240;
+/// Proposals whose errors make the margins.
+const ERRORS_KEPT: usize = 4;
 /// Objective linearisations in one program, at most.
 const MAX_OBJECTIVES: usize = 30;
 
 pub(crate) struct LatticeSearch {
     /// Where the continuous stage ended.
     relaxed: Vec<f64>,
-    region: Region,
+    ask: Ask,
     trust: Trust,
+    /// Likely points tried since the last improvement.
+    tries: usize,
+    /// Proposals in a row that did not improve.
+    misses: usize,
+    /// What the latest proposals violated, by constraint: the model's error.
+    errors: VecDeque<BTreeMap<usize, f64>>,
     /// All variables lie on lattices, so that a point can be shut out.
     pure: bool,
 }
 
+/// What is asked next.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-enum Region {
+enum Ask {
+    /// A better point near the continuous optimum.
     AroundRelaxed,
+    /// A better point near the best one.
     AroundBest,
+    /// A better point anywhere.
     Whole,
+    /// A point that violates less, while none is feasible.
+    LessViolation,
+    /// The neighbours.
+    Poll,
+    /// The better point that the models forbid by least.
+    Likely,
 }
 
 /// How far the linearisations of nonconvex constraints are believed.
@@ -89,17 +114,15 @@ impl Trust {
     }
 }
 
-enum Proposal {
-    Point(Vec<f64>),
-    Nothing,
-}
-
 impl LatticeSearch {
     pub fn new(variables: &[Variable], relaxed: &[f64]) -> Self {
         LatticeSearch {
             relaxed: relaxed.to_vec(),
-            region: Region::AroundRelaxed,
+            ask: Ask::AroundRelaxed,
             trust: Trust::Own,
+            tries: 0,
+            misses: 0,
+            errors: VecDeque::new(),
             pure: variables
                 .iter()
                 .all(|v| v.lattice.is_some() || v.lower == v.upper),
@@ -108,58 +131,105 @@ impl LatticeSearch {
 
     /// One integer program with its analysis, or one poll; tells when it is over.
     pub fn step(&mut self, notebook: &mut Notebook) -> Option<Stop> {
-        let feasible = notebook.best().is_some();
-        let proposal = match self.propose(notebook, false) {
-            Proposal::Nothing if self.region == Region::Whole && !feasible => {
-                self.propose(notebook, true)
-            }
-            proposal => proposal,
-        };
-        match (proposal, self.region) {
-            (Proposal::Point(x), region) => match notebook.analyse(&x, Stage::Modular) {
-                Ok(index) => {
-                    if region == Region::Whole && notebook.best_index() == Some(index) {
-                        self.region = Region::AroundBest;
-                    }
-                    None
+        if self.ask == Ask::Poll {
+            return match self.poll(notebook) {
+                Some(Stop::NoBetterFound) => self.go_on(notebook),
+                other => other,
+            };
+        }
+        // After each miss, one proposal with margins: a safe step to a feasible
+        // point is worth more than another that only just fails.
+        let cautious = self.misses % 2 == 1 && !self.elastic();
+        let mut proposal = None;
+        if cautious {
+            proposal = self.propose(notebook, &self.margins());
+        }
+        if proposal.is_none() {
+            if self.ask == Ask::Likely {
+                self.tries += 1;
+                if self.tries > notebook.settings.max_poll {
+                    return self.go_on(notebook);
                 }
-                // A failed point is shut out like any other.
-                Err(refusal) => stop_of(refusal),
-            },
-            (Proposal::Nothing, Region::AroundRelaxed) => {
-                self.region = if feasible {
-                    Region::AroundBest
-                } else {
-                    Region::Whole
-                };
+            }
+            proposal = self.propose(notebook, &BTreeMap::new());
+        }
+        let Some(x) = proposal else {
+            return self.go_on(notebook);
+        };
+        match notebook.analyse(&x, Stage::Modular) {
+            Ok(index) if notebook.best_index() == Some(index) => {
+                if self.ask != Ask::AroundRelaxed {
+                    self.ask = Ask::AroundBest;
+                }
+                (self.trust, self.tries, self.misses) = (Trust::Own, 0, 0);
                 None
             }
-            (Proposal::Nothing, Region::AroundBest) => {
-                self.region = Region::Whole;
+            // Its linearisation, or its being shut out, forbids it from now on.
+            Ok(index) => {
+                self.misses += 1;
+                let constraints = notebook.points[index].evaluation.constraints.iter();
+                let violated = constraints.filter(|c| c.value > 0.0);
+                self.errors
+                    .push_back(violated.map(|c| (c.id, c.value)).collect());
+                if self.errors.len() > ERRORS_KEPT {
+                    self.errors.pop_front();
+                }
                 None
             }
-            (Proposal::Nothing, Region::Whole) => {
-                let stop = self.poll(notebook)?;
-                let doubtful = notebook.linearisations.iter().any(|l| l.kappa > 0.0);
-                self.trust = match (stop, self.trust) {
-                    (Stop::NoBetterFound, Trust::Own) if doubtful => Trust::Shared,
-                    (Stop::NoBetterFound, Trust::Shared) if doubtful => Trust::Doubled,
-                    _ => return Some(stop),
-                };
-                None
-            }
+            Err(refusal) => stop_of(refusal),
         }
     }
 
-    /// The integer program of the present region.
-    fn propose(&self, notebook: &Notebook, elastic: bool) -> Proposal {
-        let nothing = Proposal::Nothing;
+    /// The present question has no answer (any more): to the next, or the end.
+    fn go_on(&mut self, notebook: &Notebook) -> Option<Stop> {
+        let feasible = notebook.best().is_some();
+        let doubtful = notebook.linearisations.iter().any(|l| l.kappa > 0.0);
+        self.ask = match self.ask {
+            Ask::AroundRelaxed if feasible => Ask::AroundBest,
+            Ask::AroundRelaxed | Ask::AroundBest => Ask::Whole,
+            Ask::Whole if !feasible => Ask::LessViolation,
+            Ask::Whole | Ask::LessViolation => Ask::Poll,
+            Ask::Poll if feasible && doubtful => Ask::Likely,
+            Ask::Poll if doubtful && self.trust != Trust::Doubled => {
+                self.trust = match self.trust {
+                    Trust::Own => Trust::Shared,
+                    Trust::Shared | Trust::Doubled => Trust::Doubled,
+                };
+                Ask::Whole
+            }
+            Ask::Poll | Ask::Likely => {
+                return Some(if notebook.points.is_empty() {
+                    Stop::NothingAdmissible
+                } else {
+                    Stop::NoBetterFound
+                });
+            }
+        };
+        None
+    }
+
+    /// Constraints may be violated in the present question, at a cost.
+    fn elastic(&self) -> bool {
+        matches!(self.ask, Ask::LessViolation | Ask::Likely)
+    }
+
+    /// Largest recent error of the model of each constraint.
+    fn margins(&self) -> BTreeMap<usize, f64> {
+        let mut margins: BTreeMap<usize, f64> = BTreeMap::new();
+        for (&id, &error) in self.errors.iter().flatten() {
+            let margin = margins.entry(id).or_insert(0.0);
+            *margin = margin.max(error);
+        }
+        margins
+    }
+
+    /// The integer program of the present question.
+    fn propose(&self, notebook: &Notebook, margins: &BTreeMap<usize, f64>) -> Option<Vec<f64>> {
+        let elastic = self.elastic();
         let variables = notebook.variables();
         let (lower, upper) = self.bounds(notebook);
         let mut program = LinearProgram::default();
-        let Some(frame) = Frame::lattice(&mut program, variables, &lower, &upper) else {
-            return nothing;
-        };
+        let frame = Frame::lattice(&mut program, variables, &lower, &upper)?;
         let mut possible = frame.add_rows(&mut program, notebook.rows());
         possible &= add_objective(
             &mut program,
@@ -168,36 +238,31 @@ impl LatticeSearch {
             elastic,
             self.delta(notebook),
         );
-        possible &= add_linearisations(&mut program, &frame, notebook, elastic, self);
+        possible &= add_linearisations(&mut program, &frame, notebook, self, margins);
         // A cut speaks of feasible points only, not of how much others violate.
-        possible &= elastic || add_cuts(&mut program, &frame, notebook);
+        possible &= self.ask == Ask::LessViolation || add_cuts(&mut program, &frame, notebook);
         if self.pure {
             possible &= shut_out(&mut program, &frame, notebook);
         }
         if !possible {
-            return nothing;
+            return None;
         }
         match program.solve(notebook.settings.node_limit) {
             Answer::Found { values, .. } => {
                 let x = frame.point(variables, &values);
-                let fresh = !notebook.knows(&x);
-                if fresh && notebook.admissible(&x) {
-                    Proposal::Point(x)
-                } else {
-                    nothing
-                }
+                (!notebook.knows(&x) && notebook.admissible(&x)).then_some(x)
             }
-            Answer::Infeasible | Answer::Failed => nothing,
+            Answer::Infeasible | Answer::Undecided | Answer::Failed => None,
         }
     }
 
-    /// Box of the present region.
+    /// Box of the present question.
     fn bounds(&self, notebook: &Notebook) -> (Vec<f64>, Vec<f64>) {
         let variables = notebook.variables();
-        let centre = match self.region {
-            Region::AroundRelaxed => Some(&self.relaxed),
-            Region::AroundBest => notebook.best().map(|best| &best.x),
-            Region::Whole => None,
+        let centre = match self.ask {
+            Ask::AroundRelaxed => Some(&self.relaxed),
+            Ask::AroundBest => notebook.best().map(|best| &best.x),
+            Ask::Whole | Ask::LessViolation | Ask::Poll | Ask::Likely => None,
         };
         let Some(centre) = centre else {
             return variables.iter().map(|v| (v.lower, v.upper)).unzip();
@@ -237,11 +302,7 @@ impl LatticeSearch {
     fn poll(&mut self, notebook: &mut Notebook) -> Option<Stop> {
         let feasible = notebook.best_index();
         let Some(base) = feasible.or(notebook.least_infeasible_index()) else {
-            return Some(if notebook.points.is_empty() {
-                Stop::NothingAdmissible
-            } else {
-                Stop::NoBetterFound
-            });
+            return Some(Stop::NoBetterFound);
         };
         let candidates = self.neighbours(notebook, base, feasible.is_some());
         for x in candidates.into_iter().take(notebook.settings.max_poll) {
@@ -252,10 +313,13 @@ impl LatticeSearch {
                         None => notebook.least_infeasible_index() == Some(index),
                     };
                     if better {
-                        self.region = Region::AroundBest;
-                        if notebook.best().is_none() {
-                            self.region = Region::Whole;
-                        }
+                        let now_feasible = notebook.best().is_some();
+                        self.ask = if now_feasible {
+                            Ask::AroundBest
+                        } else {
+                            Ask::LessViolation
+                        };
+                        (self.trust, self.tries, self.misses) = (Trust::Own, 0, 0);
                         return None;
                     }
                 }
@@ -410,10 +474,11 @@ fn add_linearisations(
     program: &mut LinearProgram,
     frame: &Frame,
     notebook: &Notebook,
-    elastic: bool,
     search: &LatticeSearch,
+    margins: &BTreeMap<usize, f64>,
 ) -> bool {
     let variables = notebook.variables();
+    let elastic = search.elastic();
     let trust = search.trust;
     let aim = if search.pure {
         0.0
@@ -438,7 +503,8 @@ fn add_linearisations(
     let mut slacks: Vec<(usize, usize)> = Vec::new();
     let mut possible = true;
     for (_, id, a, upper) in rows {
-        let (mut terms, upper) = frame.row(&a, upper - aim);
+        let margin = margins.get(&id).copied().unwrap_or(0.0);
+        let (mut terms, upper) = frame.row(&a, upper - aim - margin);
         if elastic {
             let most: f64 = terms
                 .iter()
@@ -460,10 +526,16 @@ fn add_linearisations(
         }
         possible &= program.row(&terms, upper);
     }
-    if let (true, Some(least)) = (elastic, notebook.least_infeasible()) {
+    let most = match (search.ask, notebook.least_infeasible()) {
+        (Ask::LessViolation, Some(least)) => {
+            Some((1.0 - LESS_VIOLATION) * least.evaluation.violation())
+        }
+        (Ask::Likely, _) => Some(notebook.settings.doubt),
+        _ => None,
+    };
+    if let (true, Some(most)) = (elastic, most) {
         let all: Vec<(usize, f64)> = slacks.iter().map(|&(_, slack)| (slack, 1.0)).collect();
-        let less = (1.0 - LESS_VIOLATION) * least.evaluation.violation();
-        possible &= program.row(&all, less);
+        possible &= program.row(&all, most);
     }
     possible
 }
@@ -489,20 +561,19 @@ fn add_cuts(program: &mut LinearProgram, frame: &Frame, notebook: &Notebook) -> 
 /// Forbids analysed (or failed) lattice points that no row forbids yet: the sum
 /// of the distances |n_j - p_j| is at least one.
 fn shut_out(program: &mut LinearProgram, frame: &Frame, notebook: &Notebook) -> bool {
-    let mut count = 0;
+    let own = program.columns.len();
     // The frame's columns come first in the program.
     let known = frame.columns.iter().flatten().count();
     for p in notebook.visited() {
         let inside =
             (0..p.len()).all(|j| p[j] >= frame.lower[j] - 1e-9 && p[j] <= frame.upper[j] + 1e-9);
-        if !inside || count >= MAX_SHUT_OUT || !notebook.admissible(&p) {
+        if !inside || program.columns.len() - own >= MAX_BINARIES || !notebook.admissible(&p) {
             continue;
         }
         let values = frame.values(&p, program.columns.len());
         if program.forbids(&values, known) {
             continue;
         }
-        count += 1;
         let mut terms: Vec<(usize, f64)> = Vec::new();
         let mut least = 1.0;
         for &column in frame.columns.iter().flatten() {
