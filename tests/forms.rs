@@ -2,7 +2,8 @@
 
 use std::path::Path;
 
-use corewright::model::read::{Form, TowerFile, read_tower};
+use corewright::model::read::{Form, TowerFile, parse_tower, read_tower};
+use corewright::model::write::full_form;
 
 fn read(name: &str) -> TowerFile {
     let path = Path::new(env!("CARGO_MANIFEST_DIR"))
@@ -26,4 +27,19 @@ fn the_annotated_format_is_a_valid_tower() {
     assert!((tower.storeys[0].floor.mass.mass - mass).abs() < 1e-6);
     assert_eq!(tower.storeys[44].floor.mass.mass, 1.2e6);
     assert_eq!(tower.lateral_cases[0].forces[43], 420e3);
+}
+
+#[test]
+fn the_printed_full_form_reads_back_to_an_equal_tower() {
+    for name in ["annotated.toml"] {
+        let tower = read(name).tower;
+        let printed = full_form(&tower, "Printed by a test.\nTwo lines.");
+        let again = parse_tower(&printed, "printed.toml")
+            .unwrap_or_else(|faults| panic!("{name}: {faults}\n{printed}"));
+        assert_eq!(again.tower, tower, "{name}");
+        assert_eq!(
+            full_form(&again.tower, "Printed by a test.\nTwo lines."),
+            printed
+        );
+    }
 }

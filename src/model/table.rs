@@ -552,7 +552,10 @@ impl<'a> Section<'a> {
 pub(super) fn nearest<'w>(name: &str, words: impl Iterator<Item = &'w str>) -> Option<&'w str> {
     words
         .map(|word| (strsim::damerau_levenshtein(name, word), word))
-        .filter(|(distance, word)| *distance <= 1 + name.len().max(word.len()) / 4)
+        .filter(|(distance, word)| {
+            let length = name.len().max(word.len());
+            *distance <= 1 + length / 4 && *distance < length
+        })
         .min()
         .map(|(_, word)| word)
 }
