@@ -143,6 +143,11 @@ const BEAM: usize = 6;
 const RANDOM_STARTS: usize = 12;
 /// Layouts searched to the end per scheme wanted.
 const SEARCHED_PER_SCHEME: usize = 3;
+/// Violation (sum over conditions) of a relaxation up to which its layout may
+/// still turn out feasible.
+const HOPEFUL: f64 = 0.1;
+/// Nodes of one integer program, at most.
+const NODES: usize = 400;
 /// Schemes that are searched again with a group locked, and groups tried of each.
 const VARIED: usize = 3;
 const LOCKED_EACH: usize = 3;
@@ -245,6 +250,17 @@ impl Merit {
             (Some(best), _) => (Merit::Feasible(best.evaluation.objective), point(best)),
             (None, Some(nearest)) => (Merit::Short(nearest.evaluation.violation()), point(nearest)),
             (None, None) => (Merit::Failed, None),
+        }
+    }
+
+    /// Whether a layout is worth a full search beside the best one: where some
+    /// relaxation is feasible, those that are far from it are not.
+    fn hopeful(self, best: &Screened) -> bool {
+        match (best.merit, self) {
+            (Merit::Feasible(_), Merit::Short(violation)) => violation < HOPEFUL,
+            (Merit::Short(least), Merit::Short(violation)) => violation < least + HOPEFUL,
+            (Merit::Feasible(_) | Merit::Short(_), Merit::Failed) => false,
+            _ => true,
         }
     }
 
@@ -363,7 +379,11 @@ impl Run<'_> {
         let wanted = (SEARCHED_PER_SCHEME * self.settings.schemes).max(6);
         let each = (self.left() / wanted.min(screened.len()).max(1)).clamp(1, SEARCHING);
         let affordable = (self.left() / each).max(1);
-        let chosen = &screened[..screened.len().min(wanted).min(affordable)];
+        let hopeful = screened
+            .iter()
+            .take_while(|layout| layout.merit.hopeful(&screened[0]))
+            .count();
+        let chosen = &screened[..hopeful.min(wanted).min(affordable)];
         let done = AtomicUsize::new(0);
         chosen
             .par_iter()
@@ -431,6 +451,7 @@ impl Run<'_> {
     fn solve(&self, problem: &LayoutProblem, start: &[f64], max_analyses: usize) -> Outcome {
         let settings = search::settings::Settings {
             max_analyses,
+            node_limit: NODES,
             ..Default::default()
         };
         let mut listener = Listener {
