@@ -99,20 +99,32 @@ pub(super) fn grade_modulus(strength_mpa: f64) -> f64 {
 
 /// Value at `storey` of a run that goes linearly from its first to its last.
 pub(super) fn along_run(range: StoreyRange, ends: (f64, f64), storey: usize) -> f64 {
-    if range.first == range.last {
+    if ends.0 == ends.1 {
         return ends.0;
     }
     let share = (storey - range.first) as f64 / (range.last - range.first) as f64;
     ends.0 * (1.0 - share) + ends.1 * share
 }
 
-/// Torque about the extent's centre of a force with an eccentricity, N m.
-pub(super) fn eccentric_torque(direction: Direction, force: f64, eccentricity: f64) -> f64 {
-    match direction {
+/// Torque of one storey about its extent's centre, N m: what is stated (kNm) and
+/// what the force's eccentricity (m) adds.
+pub(super) fn torque_of(
+    direction: Direction,
+    stated_knm: f64,
+    force: f64,
+    eccentricity: f64,
+) -> f64 {
+    let stated = stated_knm * 1e3;
+    if eccentricity == 0.0 {
+        return stated;
+    }
+    let added = match direction {
         // A force along X that acts at y = e turns clockwise.
         Direction::X => -force * eccentricity,
         Direction::Y => force * eccentricity,
-    }
+    };
+    // Rounded through the file's unit, so that the sum can be printed exactly.
+    (stated + added) / 1e3 * 1e3
 }
 
 pub(super) fn limits_from(values: [Limit; 7]) -> Limits {
@@ -1067,7 +1079,11 @@ impl Resolver<'_> {
         cases
             .iter()
             .map(|case| {
-                let forces = self.runs(case, "forces", &case.forces, true);
+                let forces: Vec<f64> = self
+                    .runs(case, "forces", &case.forces, true)
+                    .iter()
+                    .map(|force| force * 1e3)
+                    .collect();
                 let torques = self.runs(case, "torques", &case.torques, false);
                 let direction = case.direction.unwrap_or(Direction::X);
                 let action = case.action.unwrap_or(Action::Wind);
@@ -1075,7 +1091,7 @@ impl Resolver<'_> {
                     .iter()
                     .zip(&forces)
                     .map(|(torque, force)| {
-                        torque + eccentric_torque(direction, *force, case.eccentricity_m)
+                        torque_of(direction, *torque, *force, case.eccentricity_m)
                     })
                     .collect();
                 LateralCase {
@@ -1093,7 +1109,7 @@ impl Resolver<'_> {
             .collect()
     }
 
-    /// Values of all storeys, in N or N m.
+    /// Values of all storeys, in the file's unit.
     fn runs(&self, case: &CaseText, key: &str, runs: &[RunText], cover: bool) -> Vec<f64> {
         let mut values: Vec<Option<f64>> = vec![None; self.count];
         let mut sound = true;
@@ -1104,7 +1120,7 @@ impl Resolver<'_> {
             };
             let mut taken = Vec::new();
             for storey in range.first..=range.last {
-                let value = along_run(range, run.ends, storey) * 1000.0;
+                let value = along_run(range, run.ends, storey);
                 if values[storey - 1].replace(value).is_some() {
                     taken.push(storey);
                 }

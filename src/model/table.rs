@@ -21,6 +21,7 @@ pub(super) struct At {
     pub line: Option<usize>,
     pub path: String,
     keys: Rc<Vec<(String, usize)>>,
+    renamed: Option<(&'static str, &'static str)>,
 }
 
 impl At {
@@ -34,6 +35,10 @@ impl At {
 
     /// Place of a key of this table; the table's own line when it is not stated.
     pub fn key(&self, key: &str) -> At {
+        let key = match self.renamed {
+            Some((name, written)) if name == key => written,
+            _ => key,
+        };
         let path = if self.path.is_empty() {
             key.to_owned()
         } else {
@@ -48,7 +53,21 @@ impl At {
             line: stated.or(self.line),
             path,
             keys: Rc::default(),
+            renamed: None,
         }
+    }
+
+    /// Place of something generated from this table.
+    pub fn part(&self, kind: &str, id: &str) -> At {
+        At {
+            path: format!("{} ({kind} \"{id}\")", self.path),
+            ..self.clone()
+        }
+    }
+
+    /// Says which key of the file stands behind a key of the model.
+    pub fn rename(&mut self, key: &'static str, written: &'static str) {
+        self.renamed = Some((key, written));
     }
 
     pub fn states(&self, key: &str) -> bool {
@@ -205,6 +224,7 @@ impl<'a> Section<'a> {
             line,
             path,
             keys: Rc::new(keys),
+            renamed: None,
         };
         Section {
             table,
