@@ -119,8 +119,13 @@ fn core(section: &Section<'_>, text: &mut TowerText) -> Rectangle {
                     .push(read_sizes(&sizes, id, "thickness_mm", THICKNESS_MM, true));
                 sizes.finish();
             }
-            None if section.has(key) => {}
-            None => section.miss(key, group),
+            None => {
+                if !section.has(key) {
+                    section.miss(key, group);
+                }
+                // The walls are generated all the same, and refer to it.
+                text.wall_groups.push(SizeGroupText::empty(&section.at, id));
+            }
         }
     }
     let doors = doors(section, widths.len());
@@ -417,16 +422,7 @@ fn link_group(depth: f64, doors: &[Door]) -> String {
 
 fn links(section: &Section<'_>, doors: &[Door], text: &mut TowerText) {
     let rules = section.section("links");
-    let mut shared = SizeGroupText {
-        at: section.at.clone(),
-        id: String::new(),
-        zones: Vec::new(),
-        vary: None,
-        non_increasing: false,
-        max_drop_mm: None,
-        zones_move_together: false,
-        breadth_mm: None,
-    };
+    let mut shared = SizeGroupText::empty(&section.at, "");
     if let Some(rules) = rules {
         shared.at = rules.at.clone();
         shared.breadth_mm = rules.number("breadth_mm", THICKNESS_MM);

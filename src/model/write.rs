@@ -766,7 +766,7 @@ mod tests {
         for number in [
             333.333_333_333_333_3,
             287.654_321_987_654_3,
-            1234.567_891_234_567,
+            1_234.567_891_234_567,
         ] {
             let metres: f64 = number / 1000.0;
             let printed: f64 = milli(metres).parse().unwrap();
