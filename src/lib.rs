@@ -8,3 +8,9 @@ pub mod model;
 pub mod elements;
 
 pub mod analysis;
+
+pub mod checks;
+
+pub mod design;
+
+pub mod schemes;
