@@ -627,6 +627,47 @@ fn portal_frame_with_flexible_beam() {
 }
 
 #[test]
+fn column_with_a_beam_pinned_at_its_far_end() {
+    // Slope deflection: a beam of I and L pinned far away holds the column's top
+    // with 3 E Ib/L; k = 12 i/h^2 (i + s)/(4 i + s), i = E Ic/h, s = 3 E Ib/L.
+    let (height, span) = (3.6, 7.5);
+    for depth in [0.5_f64, 1.5] {
+        for angle in [0.0, 0.5 * PI] {
+            let mut tower = equal_storeys(1, height, 1e5, 1e7);
+            tower.cracking.unfactored.columns = 1e-6;
+            tower.cracking.unfactored.beams = 1e-6;
+            let (sin, cos) = f64::sin_cos(angle);
+            let base = node(&mut tower, 0.0, 0.0);
+            let far = node(&mut tower, span * cos, span * sin);
+            let away = node(&mut tower, 3.0, 3.0);
+            column(&mut tower, base, 1.0, true);
+            column(&mut tower, far, 1e3, false);
+            // Twist must be held; the column's own place is the origin.
+            column(&mut tower, away, 1.0, true);
+            tower.column_groups[2].zones[0].width_x = 1e-2;
+            tower.column_groups[2].zones[0].width_y = 1e-2;
+            let group = beam_group(&mut tower, 0.8, depth);
+            beam(&mut tower, group, base, far);
+            let i = E * 1e-6 / 12.0 / height;
+            let s = 3.0 * E * 1e-6 * 0.8 * depth.powi(3) / 12.0 / span;
+            let expected = 12.0 * i / height.powi(2) * (i + s) / (4.0 * i + s);
+            let along = if angle == 0.0 {
+                Direction::X
+            } else {
+                Direction::Y
+            };
+            tower.lateral_cases = vec![case(along, Action::Wind, vec![10.0])];
+            let moved = moved(&tower, 0);
+            let found = 10.0 / if angle == 0.0 { moved.x(1) } else { moved.y(1) };
+            assert!(
+                off(found, expected) < 1e-5,
+                "{depth} {angle}: {found} {expected}"
+            );
+        }
+    }
+}
+
+#[test]
 fn storey_drift_of_a_regular_frame() {
     // Far from base and top, inflection at mid-height and mid-span: drift
     // V h^2/(12 E) (1/G + 1/C), C = sum Ic/h, G = sum Ib/L (Stafford Smith and
