@@ -627,6 +627,38 @@ fn portal_frame_with_flexible_beam() {
 }
 
 #[test]
+fn a_stiff_tower_rocks_on_its_base_as_a_rigid_body() {
+    // Statics: top displacement F H^2/k on a rotational spring k, whatever the
+    // parts of the tower are that turn with it.
+    let (height, force) = (8.0, 1e4);
+    for direction in [Direction::X, Direction::Y] {
+        let mut tower = equal_storeys(2, 4.0, 1e5, 1e7);
+        let walls = wall_group(&mut tower, 0.5);
+        wall_about(&mut tower, walls, 7.0, -2.0, 5.0, 0.7);
+        for (x, y) in [(-4.0, -3.0), (4.0, 3.0), (-4.0, 3.0)] {
+            let at = node(&mut tower, x, y);
+            column(&mut tower, at, 2.0, true);
+        }
+        let beams = beam_group(&mut tower, 1.0, 2.0);
+        beam(&mut tower, beams, 2, 4);
+        beam(&mut tower, beams, 4, 3);
+        tower.base = Base::RotationalSprings {
+            about_x: 1e6,
+            about_y: 2e6,
+            centre: Point { x: 1.0, y: -0.5 },
+        };
+        tower.lateral_cases = vec![case(direction, Action::Wind, vec![0.0, force])];
+        let moved = moved(&tower, 0);
+        let (found, spring) = match direction {
+            Direction::X => (moved.x(2), 2e6),
+            Direction::Y => (moved.y(2), 1e6),
+        };
+        let expected = force * height * height / spring;
+        assert!(off(found, expected) < 2e-3, "{found} {expected}");
+    }
+}
+
+#[test]
 fn column_with_a_beam_pinned_at_its_far_end() {
     // Slope deflection: a beam of I and L pinned far away holds the column's top
     // with 3 E Ib/L; k = 12 i/h^2 (i + s)/(4 i + s), i = E Ic/h, s = 3 E Ib/L.
