@@ -41,7 +41,7 @@
 
 use std::collections::{BTreeMap, VecDeque};
 
-use super::frame::{Frame, module_value, modules_within};
+use super::frame::{Frame, binding_lattice, module_value, modules_within};
 use super::linear_program::{Answer, LinearProgram};
 use super::notebook::{Linearisation, Notebook, Refusal, distance_squared, rows_hold, slope};
 use super::outcome::Stop;
@@ -340,7 +340,7 @@ impl LatticeSearch {
         let steps: Vec<(usize, f64)> = (0..variables.len())
             .flat_map(|j| [-1, 1].map(|step| (j, step)))
             .filter_map(|(j, step)| {
-                let lattice = variables[j].lattice?;
+                let lattice = binding_lattice(&variables[j])?;
                 let k = ((point.x[j] - lattice.anchor) / lattice.module).round() as i64 + step;
                 let (first, last) =
                     modules_within(&variables[j], variables[j].lower, variables[j].upper)?;
