@@ -139,19 +139,27 @@ impl LatticeSearch {
         }
         // After each miss, one proposal with margins: a safe step to a feasible
         // point is worth more than another that only just fails.
-        let cautious = self.misses % 2 == 1 && !self.elastic();
+        // While nothing is feasible, every one after the first miss.
+        let cautious = if notebook.best().is_some() {
+            self.misses % 2 == 1
+        } else {
+            self.misses > 0
+        };
+        let mut margins = BTreeMap::new();
         let mut proposal = None;
-        if cautious {
-            proposal = self.propose(notebook, &self.margins());
+        if cautious && !self.elastic() {
+            margins = self.margins(notebook);
+            proposal = self.propose(notebook, &margins);
         }
         if proposal.is_none() {
+            margins.clear();
             if self.ask == Ask::Likely {
                 self.tries += 1;
                 if self.tries > notebook.settings.max_poll {
                     return self.go_on(notebook);
                 }
             }
-            proposal = self.propose(notebook, &BTreeMap::new());
+            proposal = self.propose(notebook, &margins);
         }
         let Some(x) = proposal else {
             return self.go_on(notebook);
@@ -168,9 +176,13 @@ impl LatticeSearch {
             Ok(index) => {
                 self.misses += 1;
                 let constraints = notebook.points[index].evaluation.constraints.iter();
-                let violated = constraints.filter(|c| c.value > 0.0);
+                // The model had promised -margin.
+                let errors = constraints.map(|c| {
+                    let margin = margins.get(&c.id).copied().unwrap_or(0.0);
+                    (c.id, c.value + margin)
+                });
                 self.errors
-                    .push_back(violated.map(|c| (c.id, c.value)).collect());
+                    .push_back(errors.filter(|(_, error)| *error > 0.0).collect());
                 if self.errors.len() > ERRORS_KEPT {
                     self.errors.pop_front();
                 }
@@ -213,8 +225,15 @@ impl LatticeSearch {
         matches!(self.ask, Ask::LessViolation | Ask::Likely)
     }
 
-    /// Largest recent error of the model of each constraint.
-    fn margins(&self) -> BTreeMap<usize, f64> {
+    /// Largest recent error of the model of each constraint. While nothing is
+    /// feasible, the latest largest one for all alike: with many constraints
+    /// near their limits another one fails each time.
+    fn margins(&self, notebook: &Notebook) -> BTreeMap<usize, f64> {
+        if let (None, Some(latest)) = (notebook.best(), self.errors.back()) {
+            let margin = latest.values().copied().fold(0.0, f64::max);
+            let ids = notebook.linearisations.iter().map(|l| l.id);
+            return ids.map(|id| (id, margin)).collect();
+        }
         let mut margins: BTreeMap<usize, f64> = BTreeMap::new();
         for (&id, &error) in self.errors.iter().flatten() {
             let margin = margins.entry(id).or_insert(0.0);
@@ -468,8 +487,8 @@ fn same_row(a: &(Vec<f64>, f64), b: &(Vec<f64>, f64)) -> bool {
     near(a.1, b.1) && a.0.iter().zip(&b.0).all(|(&x, &y)| near(x, y))
 }
 
-/// Rows of the constraints: those nearest to governing at the middle of the box,
-/// up to the number allowed. Elastic: one slack for each constraint.
+/// Rows of the constraints: those nearest to governing at the best point (or the
+/// continuous optimum), up to the number allowed. Elastic: one slack for each constraint.
 fn add_linearisations(
     program: &mut LinearProgram,
     frame: &Frame,
@@ -485,6 +504,7 @@ fn add_linearisations(
     } else {
         notebook.settings.aim
     };
+    let reference = notebook.best().map_or(&search.relaxed, |best| &best.x);
     let mut rows: Vec<(f64, usize, Vec<f64>, f64)> = notebook
         .linearisations
         .iter()
@@ -492,10 +512,8 @@ fn add_linearisations(
             let origin = &notebook.points[linearisation.point].x;
             let kappa = trust.kappa(notebook, linearisation);
             let (a, upper) = frame.softened(variables, linearisation, origin, kappa);
-            let middle: f64 = (0..a.len())
-                .map(|j| a[j] * 0.5 * (frame.lower[j] + frame.upper[j]))
-                .sum();
-            (upper - middle, linearisation.id, a, upper)
+            let there: f64 = a.iter().zip(reference).map(|(a, x)| a * x).sum();
+            (upper - there, linearisation.id, a, upper)
         })
         .collect();
     rows.sort_by(|a, b| a.0.total_cmp(&b.0));
