@@ -21,8 +21,8 @@
 //!
 //! A linearisation says too little of a curved constraint, so that proposals
 //! tend to fail by a little, over and over when there are many variables. After
-//! every miss one proposal therefore keeps a margin to each constraint, as large
-//! as the model's error was lately; only programs without margins prove anything.
+//! every miss one proposal therefore keeps a margin to all constraints, as large
+//! as the model's error was there; only programs without margin prove anything.
 //!
 //! The region is first a few modules around the continuous optimum, then around
 //! the best point, then the whole lattice. When all three give nothing, the
@@ -39,7 +39,7 @@
 //! elastic master and infeasible points); J. Viswanathan and I. E. Grossmann
 //! 1990, Comput. Chem. Eng. 14 (softened rows for nonconvex functions).
 
-use std::collections::{BTreeMap, VecDeque};
+use std::collections::BTreeMap;
 
 use super::frame::{Frame, binding_lattice, module_value, modules_within};
 use super::linear_program::{Answer, LinearProgram};
@@ -56,8 +56,6 @@ const LESS_VIOLATION: f64 = 1e-3;
 const MIXED_IMPROVEMENT: f64 = 1e-4;
 /// Binary columns that shut points out of one program, at most.
 const MAX_BINARIES: usize = 240;
-/// Proposals whose errors make the margins.
-const ERRORS_KEPT: usize = 4;
 /// Objective linearisations in one program, at most.
 const MAX_OBJECTIVES: usize = 30;
 
@@ -70,8 +68,9 @@ pub(crate) struct LatticeSearch {
     tries: usize,
     /// Proposals in a row that did not improve.
     misses: usize,
-    /// What the latest proposals violated, by constraint: the model's error.
-    errors: VecDeque<BTreeMap<usize, f64>>,
+    /// Margin of cautious proposals: the model's largest error at the latest
+    /// miss, halved when nothing better keeps it.
+    caution: f64,
     /// All variables lie on lattices, so that a point can be shut out.
     pure: bool,
 }
@@ -122,7 +121,7 @@ impl LatticeSearch {
             trust: Trust::Own,
             tries: 0,
             misses: 0,
-            errors: VecDeque::new(),
+            caution: 0.0,
             pure: variables
                 .iter()
                 .all(|v| v.lattice.is_some() || v.lower == v.upper),
@@ -145,21 +144,23 @@ impl LatticeSearch {
         } else {
             self.misses > 0
         };
-        let mut margins = BTreeMap::new();
+        let mut margin = 0.0;
         let mut proposal = None;
         if cautious && !self.elastic() {
-            margins = self.margins(notebook);
-            proposal = self.propose(notebook, &margins);
+            margin = self.caution;
+            proposal = self.propose(notebook, margin);
         }
         if proposal.is_none() {
-            margins.clear();
+            if margin > 0.0 {
+                (self.caution, margin) = (0.5 * margin, 0.0);
+            }
             if self.ask == Ask::Likely {
                 self.tries += 1;
                 if self.tries > notebook.settings.max_poll {
                     return self.go_on(notebook);
                 }
             }
-            proposal = self.propose(notebook, &margins);
+            proposal = self.propose(notebook, margin);
         }
         let Some(x) = proposal else {
             return self.go_on(notebook);
@@ -175,17 +176,8 @@ impl LatticeSearch {
             // Its linearisation, or its being shut out, forbids it from now on.
             Ok(index) => {
                 self.misses += 1;
-                let constraints = notebook.points[index].evaluation.constraints.iter();
                 // The model had promised -margin.
-                let errors = constraints.map(|c| {
-                    let margin = margins.get(&c.id).copied().unwrap_or(0.0);
-                    (c.id, c.value + margin)
-                });
-                self.errors
-                    .push_back(errors.filter(|(_, error)| *error > 0.0).collect());
-                if self.errors.len() > ERRORS_KEPT {
-                    self.errors.pop_front();
-                }
+                self.caution = margin + notebook.points[index].evaluation.worst().max(0.0);
                 None
             }
             Err(refusal) => stop_of(refusal),
@@ -225,25 +217,8 @@ impl LatticeSearch {
         matches!(self.ask, Ask::LessViolation | Ask::Likely)
     }
 
-    /// Largest recent error of the model of each constraint. While nothing is
-    /// feasible, the latest largest one for all alike: with many constraints
-    /// near their limits another one fails each time.
-    fn margins(&self, notebook: &Notebook) -> BTreeMap<usize, f64> {
-        if let (None, Some(latest)) = (notebook.best(), self.errors.back()) {
-            let margin = latest.values().copied().fold(0.0, f64::max);
-            let ids = notebook.linearisations.iter().map(|l| l.id);
-            return ids.map(|id| (id, margin)).collect();
-        }
-        let mut margins: BTreeMap<usize, f64> = BTreeMap::new();
-        for (&id, &error) in self.errors.iter().flatten() {
-            let margin = margins.entry(id).or_insert(0.0);
-            *margin = margin.max(error);
-        }
-        margins
-    }
-
     /// The integer program of the present question.
-    fn propose(&self, notebook: &Notebook, margins: &BTreeMap<usize, f64>) -> Option<Vec<f64>> {
+    fn propose(&self, notebook: &Notebook, margin: f64) -> Option<Vec<f64>> {
         let elastic = self.elastic();
         let variables = notebook.variables();
         let (lower, upper) = self.bounds(notebook);
@@ -257,7 +232,7 @@ impl LatticeSearch {
             elastic,
             self.delta(notebook),
         );
-        possible &= add_linearisations(&mut program, &frame, notebook, self, margins);
+        possible &= add_linearisations(&mut program, &frame, notebook, self, margin);
         // A cut speaks of feasible points only, not of how much others violate.
         possible &= self.ask == Ask::LessViolation || add_cuts(&mut program, &frame, notebook);
         if self.pure {
@@ -494,7 +469,7 @@ fn add_linearisations(
     frame: &Frame,
     notebook: &Notebook,
     search: &LatticeSearch,
-    margins: &BTreeMap<usize, f64>,
+    margin: f64,
 ) -> bool {
     let variables = notebook.variables();
     let elastic = search.elastic();
@@ -521,7 +496,6 @@ fn add_linearisations(
     let mut slacks: Vec<(usize, usize)> = Vec::new();
     let mut possible = true;
     for (_, id, a, upper) in rows {
-        let margin = margins.get(&id).copied().unwrap_or(0.0);
         let (mut terms, upper) = frame.row(&a, upper - aim - margin);
         if elastic {
             let most: f64 = terms
