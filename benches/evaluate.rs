@@ -17,12 +17,20 @@ use criterion::{Criterion, criterion_group, criterion_main};
 fn tower(storeys: usize, bending: usize) -> Tower {
     let mut tower = equal_storeys(storeys, 3.4, 1.2e6, 1.2e8);
     tower.structure_mass = StructureMass::All;
-    let zones = [(storeys / 3, 0.6), (storeys / 3, 0.5), (storeys - 2 * (storeys / 3), 0.4)];
+    let zones = [
+        (storeys / 3, 0.6),
+        (storeys / 3, 0.5),
+        (storeys - 2 * (storeys / 3), 0.4),
+    ];
     let webs = wall_zones(&mut tower, &zones);
     let flanges = wall_zones(&mut tower, &zones);
     for group in &mut tower.wall_groups {
         for zone in &mut group.zones {
-            zone.vary = Some(Vary { min: 0.2, max: 1.0, module: 0.05 });
+            zone.vary = Some(Vary {
+                min: 0.2,
+                max: 1.0,
+                module: 0.05,
+            });
         }
     }
     let places: Vec<[usize; 2]> = [-7.5, -2.5, 2.5, 7.5]
@@ -36,7 +44,11 @@ fn tower(storeys: usize, bending: usize) -> Tower {
         wall(&mut tower, flanges, pair[0][0], pair[1][0]);
         wall(&mut tower, flanges, pair[0][1], pair[1][1]);
     }
-    let edge = BeamGroup { id: "edge".into(), breadth: 0.4, depth: 0.8 };
+    let edge = BeamGroup {
+        id: "edge".into(),
+        breadth: 0.4,
+        depth: 0.8,
+    };
     tower.beam_groups.push(edge);
     let ring: Vec<usize> = (0..bending)
         .map(|i| {
@@ -51,7 +63,10 @@ fn tower(storeys: usize, bending: usize) -> Tower {
             group: 0,
             from,
             to: ring[(i + 1) % bending],
-            storeys: StoreyRange { first: 1, last: storeys },
+            storeys: StoreyRange {
+                first: 1,
+                last: storeys,
+            },
         });
     }
     tower.lateral_cases = vec![
@@ -67,11 +82,16 @@ fn evaluation(criterion: &mut Criterion) {
         let values = Sizes::of(&tower).values(&tower);
         let mut analyst = Analyst::new(&tower);
         let per_level = analyst.freedom_count() / 60;
-        let mut group = criterion.benchmark_group(format!("60 storeys, {per_level} freedoms a level"));
+        let mut group =
+            criterion.benchmark_group(format!("60 storeys, {per_level} freedoms a level"));
         group.bench_function("new layout", |b| b.iter(|| Analyst::new(&tower)));
-        group.bench_function("analysis", |b| b.iter(|| analyst.analyse(&values).expect("stands")));
+        group.bench_function("analysis", |b| {
+            b.iter(|| analyst.analyse(&values).expect("stands"))
+        });
         let response = analyst.analyse(&values).expect("stands");
-        group.bench_function("checks", |b| b.iter(|| checks(&tower, &response).expect("modes")));
+        group.bench_function("checks", |b| {
+            b.iter(|| checks(&tower, &response).expect("modes"))
+        });
         group.bench_function("conditions with gradients", |b| {
             b.iter(|| conditions(&analyst, &response).expect("modes"))
         });

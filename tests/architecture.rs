@@ -35,7 +35,10 @@ fn rooms() -> Vec<String> {
 /// Code of a file without its unit tests.
 fn code(path: &Path) -> String {
     let text = fs::read_to_string(path).expect("a source file");
-    text.split("#[cfg(test)]").next().expect("some text").to_owned()
+    text.split("#[cfg(test)]")
+        .next()
+        .expect("some text")
+        .to_owned()
 }
 
 #[test]
@@ -47,9 +50,13 @@ fn rooms_import_downwards_only() {
         for path in sources(&root().join("src").join(room)) {
             for (number, line) in code(&path).lines().enumerate() {
                 for part in line.split("crate::").skip(1) {
-                    let other: String =
-                        part.chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect();
-                    let Some(below) = rooms.iter().position(|name| *name == other) else { continue };
+                    let other: String = part
+                        .chars()
+                        .take_while(|c| c.is_alphanumeric() || *c == '_')
+                        .collect();
+                    let Some(below) = rooms.iter().position(|name| *name == other) else {
+                        continue;
+                    };
                     imports += 1;
                     assert!(
                         below <= floor,
@@ -77,7 +84,13 @@ fn outside_crates_come_in_by_their_own_doors() {
     ];
     for path in sources(&root().join("src")) {
         let place = path.strip_prefix(root().join("src")).expect("under src");
-        let room = place.components().next().expect("a room").as_os_str().to_string_lossy().into_owned();
+        let room = place
+            .components()
+            .next()
+            .expect("a room")
+            .as_os_str()
+            .to_string_lossy()
+            .into_owned();
         let text = code(&path);
         for (name, allowed) in &doors {
             let used = text.lines().any(|line| {
