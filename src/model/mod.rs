@@ -12,6 +12,7 @@ mod file;
 pub mod read;
 mod resolve;
 mod short;
+pub mod sizes;
 mod table;
 pub mod tower;
 mod validate;

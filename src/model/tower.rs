@@ -345,7 +345,11 @@ pub enum Base {
         per_node: BTreeMap<usize, f64>,
     },
     /// The base as a whole turns about the X and Y axes through `centre`, N m/rad.
-    RotationalSprings { about_x: f64, about_y: f64, centre: Point },
+    RotationalSprings {
+        about_x: f64,
+        about_y: f64,
+        centre: Point,
+    },
 }
 
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -455,7 +459,10 @@ impl Tower {
 
     /// Height of level `level` above the base, m.
     pub fn elevation(&self, level: usize) -> f64 {
-        self.storeys[..level].iter().map(|storey| storey.height).sum()
+        self.storeys[..level]
+            .iter()
+            .map(|storey| storey.height)
+            .sum()
     }
 
     /// Height of the top floor above the base, m.
@@ -467,7 +474,10 @@ impl Tower {
     pub fn position(&self, node: usize) -> Point {
         let node = &self.nodes[node];
         if node.moves_with_core {
-            Point { x: node.position.x + self.core.x, y: node.position.y + self.core.y }
+            Point {
+                x: node.position.x + self.core.x,
+                y: node.position.y + self.core.y,
+            }
         } else {
             node.position
         }
@@ -485,11 +495,21 @@ impl Tower {
             .wall_groups
             .iter_mut()
             .flat_map(|group| &mut group.zones)
-            .chain(given.link_groups.iter_mut().flat_map(|group| &mut group.zones));
+            .chain(
+                given
+                    .link_groups
+                    .iter_mut()
+                    .flat_map(|group| &mut group.zones),
+            );
         for zone in zones {
             zone.size = zone.given;
         }
-        for place in given.outriggers.places.iter_mut().chain(&mut given.belts.places) {
+        for place in given
+            .outriggers
+            .places
+            .iter_mut()
+            .chain(&mut given.belts.places)
+        {
             place.in_use = place.given_in_use;
             place.thickness = place.given_thickness;
         }

@@ -56,7 +56,10 @@ pub struct Evaluation {
 impl Evaluation {
     /// Largest constraint value, or minus infinity when there are none.
     pub fn worst(&self) -> f64 {
-        self.constraints.iter().map(|c| c.value).fold(f64::NEG_INFINITY, f64::max)
+        self.constraints
+            .iter()
+            .map(|c| c.value)
+            .fold(f64::NEG_INFINITY, f64::max)
     }
 
     /// Sum of the violated parts; zero when feasible.

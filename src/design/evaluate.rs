@@ -1,0 +1,113 @@
+//! The one road from variables to an evaluation.
+
+use std::sync::Mutex;
+
+use super::variables::Variables;
+use crate::analysis::analyst::{AnalysisError, Analyst, Response};
+use crate::analysis::inertia::Masses;
+use crate::checks::{Check, checks, conditions};
+use crate::model::sizes::Sizes;
+use crate::model::tower::Tower;
+use crate::search::problem::{
+    Constraint, Evaluation, EvaluationFailure, LinearRow, Problem, Variable,
+};
+
+/// One layout of a tower as a problem: least concrete added to the tower as
+/// given (m3), subject to every check. Variables in m.
+pub struct LayoutProblem {
+    variables: Variables,
+    given_concrete: f64,
+    analyst: Mutex<Analyst>,
+}
+
+impl LayoutProblem {
+    /// For the present layout of `tower`; `given_concrete` (m3) is that of the
+    /// tower as given.
+    pub fn new(tower: &Tower, given_concrete: f64) -> Self {
+        let analyst = Analyst::new(tower);
+        let variables = Variables::of(tower, analyst.sizes());
+        LayoutProblem {
+            variables,
+            given_concrete,
+            analyst: Mutex::new(analyst),
+        }
+    }
+
+    /// The same problem with modules left aside.
+    pub fn relaxed(mut self) -> Self {
+        for variable in &mut self.variables.list {
+            variable.lattice = None;
+        }
+        self
+    }
+
+    pub fn map(&self) -> &Variables {
+        &self.variables
+    }
+
+    /// Values of the variables in `tower`, which has this layout.
+    pub fn read(&self, tower: &Tower) -> Vec<f64> {
+        self.variables.read(&Sizes::of(tower).values(tower))
+    }
+
+    /// `tower` with the sizes of `x`.
+    pub fn tower_at(&self, tower: &Tower, x: &[f64]) -> Tower {
+        let mut changed = tower.clone();
+        Sizes::of(tower).apply(&mut changed, &self.variables.sizes_at(x));
+        changed
+    }
+}
+
+/// Concrete of a tower at its present layout and sizes, m3.
+pub fn concrete(tower: &Tower) -> f64 {
+    Masses::of(tower, &Sizes::of(tower)).total_concrete()
+}
+
+/// A fresh, independent analysis of a tower as it stands, with its checks.
+///
+/// # Errors
+/// As [`Analyst::analyse`] and [`checks`].
+pub fn examine(tower: &Tower) -> Result<(Response, Vec<Check>), AnalysisError> {
+    let sizes = Sizes::of(tower);
+    let response = Analyst::new(tower).analyse(&sizes.values(tower))?;
+    let checks = checks(tower, &response)?;
+    Ok((response, checks))
+}
+
+impl Problem for LayoutProblem {
+    fn variables(&self) -> &[Variable] {
+        &self.variables.list
+    }
+
+    fn rows(&self) -> &[LinearRow] {
+        &self.variables.rows
+    }
+
+    fn evaluate(&self, x: &[f64]) -> Result<Evaluation, EvaluationFailure> {
+        let failure = |error: AnalysisError| EvaluationFailure(error.to_string());
+        let mut analyst = self
+            .analyst
+            .lock()
+            .unwrap_or_else(|poisoned| poisoned.into_inner());
+        let response = analyst
+            .analyse(&self.variables.sizes_at(x))
+            .map_err(failure)?;
+        let constraints = conditions(&analyst, &response)
+            .map_err(failure)?
+            .into_iter()
+            .map(|condition| Constraint {
+                id: condition.id,
+                value: condition.value,
+                gradient: self.variables.by_variable(&condition.by_size),
+            })
+            .collect();
+        Ok(Evaluation {
+            objective: response.masses.total_concrete() - self.given_concrete,
+            gradient: self
+                .variables
+                .by_variable(&response.masses.total_concrete_by_size()),
+            constraints,
+            cuts: Vec::new(),
+        })
+    }
+}
