@@ -154,18 +154,18 @@ fn odd_but_allowed_things_are_warned_of_with_their_place() {
         .replace("mass_centre_m = [11.5, 10]", "mass_centre_m = [2, 10]")
         .replace("thickness_mm = 300 }", "thickness_mm = 300, given_mm = 320, vary = { max_mm = 420, module_mm = 50, min_mm = 200, thin = true } }");
     let text = format!(
-        "{text}\n[[nodes]]\nid = \"spare\"\nat_m = [8, 7]\n[[options]]\nid = \"nothing\"\n"
+        "{text}\n[[nodes]]\nid = \"spare\"\nat_m = [20, 10]\n[[options]]\nid = \"nothing\"\n"
     );
     let file = parse_tower(&text, "odd.toml").unwrap_or_else(|faults| panic!("{faults}"));
     let expected = [
-        "odd.toml:27: storeys[2].mass_centre_m: lies outside the floor's extent",
-        "odd.toml:46: nodes[6] \"m\".at_m: lies outside the floor of storey 1, where it carries something",
-        "odd.toml:52: wall_groups[1] \"core\".zones[2].thickness_mm: 300 is not 320 plus whole steps of 50",
+        "odd.toml:28: storeys[2].mass_centre_m: lies outside the floor's extent",
+        "odd.toml:47: nodes[6] \"m\".at_m: lies outside the floor of storey 1, where it carries something",
+        "odd.toml:53: wall_groups[1] \"core\".zones[2].thickness_mm: 300 is not 320 plus whole steps of 50",
         "odd.toml:75: walls[4] \"km\".storeys: starts at storey 3 on its end nodes alone (a transfer)",
         "odd.toml:83: links[1] \"ad\".from: no panel stands in line with the link at node \"a\" in storeys 1 to 12: its end is pinned there",
         "odd.toml:84: links[1] \"ad\".to: no panel stands in line with the link at node \"d\" in storeys 1 to 12: its end is pinned there",
         "odd.toml:136: nodes[7] \"spare\": carries no wall and no column",
-        "odd.toml:136: nodes[7] \"spare\": stands where node \"a\" does, without being joined to it",
+        "odd.toml:136: nodes[7] \"spare\": stands where node \"k\" does, without being joined to it",
         "odd.toml:139: options[1] \"nothing\": no wall and no link belongs to it",
     ];
     assert_eq!(file.warnings, expected);
