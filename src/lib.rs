@@ -34,3 +34,5 @@ pub mod design;
 
 /// Alternatives: made, searched in parallel, told apart, ranked.
 pub mod schemes;
+
+pub mod report;
