@@ -286,10 +286,21 @@ fn wall_area(tower: &Tower, sizes: &Sizes, wall: usize, storey: usize) -> Sized 
         tower.position(tower.walls[wall].from),
         tower.position(tower.walls[wall].to),
     );
-    let length = (b.x - a.x).hypot(b.y - a.y);
+    let (dx, dy) = (b.x - a.x, b.y - a.y);
+    let length = dx.hypot(dy);
+    let size = group.zones[zone_of(&group.zones, storey)].size;
     let mut area = Sized::zero(sizes.len());
-    area.value = group.zones[zone_of(&group.zones, storey)].size * length;
+    area.value = size * length;
     area.by_size[thickness] = length;
+    // A wall from the core to a node that stays grows and shrinks with the offset.
+    let moves = |node: usize| f64::from(u8::from(tower.nodes[node].moves_with_core));
+    let stretch = moves(tower.walls[wall].to) - moves(tower.walls[wall].from);
+    if tower.core.vary_x.is_some() {
+        area.by_size[sizes.core_x()] = size * stretch * dx / length;
+    }
+    if tower.core.vary_y.is_some() {
+        area.by_size[sizes.core_y()] = size * stretch * dy / length;
+    }
     area
 }
 
