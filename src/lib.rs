@@ -35,4 +35,5 @@ pub mod design;
 /// Alternatives: made, searched in parallel, told apart, ranked.
 pub mod schemes;
 
+/// Results for people and programs.
 pub mod report;
