@@ -22,6 +22,8 @@ pub struct Factor {
     triangles: Vec<Dense>,
     /// `W_i = L_i^-1 K_i,i+1`.
     couplings: Vec<Dense>,
+    /// Diagonal of the block in hand, before elimination.
+    original: Vec<f64>,
     /// Smallest and largest pivot.
     pivots: (f64, f64),
     /// False from the start of a factorisation until it has succeeded.
@@ -36,6 +38,7 @@ impl Factor {
             offsets: Vec::new(),
             triangles: Vec::new(),
             couplings: Vec::new(),
+            original: Vec::new(),
             pivots: (f64::INFINITY, 0.0),
             complete: false,
         };
@@ -49,27 +52,41 @@ impl Factor {
     /// [`NotPositiveDefinite`]; the factor then refuses to solve until another
     /// call succeeds.
     pub fn refactor(&mut self, matrix: &BlockTridiagonal) -> Result<(), NotPositiveDefinite> {
-        self.complete = false;
-        self.take_sizes(matrix);
-        self.pivots = (f64::INFINITY, 0.0);
-        let largest = self.triangles.iter().map(Dense::rows).max().unwrap_or(0);
-        let mut scratch = CholeskyScratch::new(largest);
+        let mut scratch = self.begin(matrix);
         for i in 0..self.triangles.len() {
-            let triangle = &mut self.triangles[i];
-            copy_lower(matrix.diagonal(i), triangle);
-            if i > 0 {
-                subtract_gram_lower(&self.couplings[i - 1], triangle);
+            // Copied block by block, so that elimination finds them in the cache.
+            copy_lower(matrix.diagonal(i), &mut self.triangles[i]);
+            if let Some(coupling) = self.couplings.get_mut(i) {
+                let values = coupling.as_mut_slice();
+                values.copy_from_slice(matrix.coupling(i).as_slice());
             }
-            let outcome = cholesky_lower(triangle, &mut scratch);
-            self.check_pivots(matrix, i, outcome)?;
-            if i < self.couplings.len() {
-                let coupling = &mut self.couplings[i];
-                coupling
-                    .as_mut_slice()
-                    .copy_from_slice(matrix.coupling(i).as_slice());
-                let columns = coupling.cols();
-                solve_lower(&self.triangles[i], coupling.as_mut_slice(), columns);
+            self.eliminate(i, &mut scratch)?;
+        }
+        self.complete = true;
+        Ok(())
+    }
+
+    /// [`refactor`](Self::refactor) without a copy: factors in the matrix's own
+    /// memory and hands back the factor's old memory in its place. The result is
+    /// the same to the bit; it moves half the memory, which counts once a matrix
+    /// outgrows the cache.
+    ///
+    /// The matrix keeps its sizes, but its values are of no meaning afterwards,
+    /// also after an error: call [`BlockTridiagonal::set_zero`] and fill it anew.
+    ///
+    /// # Errors
+    /// As [`refactor`](Self::refactor).
+    pub fn refactor_consuming(
+        &mut self,
+        matrix: &mut BlockTridiagonal,
+    ) -> Result<(), NotPositiveDefinite> {
+        let mut scratch = self.begin(matrix);
+        for i in 0..self.triangles.len() {
+            std::mem::swap(&mut self.triangles[i], matrix.diagonal_mut(i));
+            if let Some(coupling) = self.couplings.get_mut(i) {
+                std::mem::swap(coupling, matrix.coupling_mut(i));
             }
+            self.eliminate(i, &mut scratch)?;
         }
         self.complete = true;
         Ok(())
@@ -209,6 +226,35 @@ impl Factor {
         }
     }
 
+    fn begin(&mut self, matrix: &BlockTridiagonal) -> CholeskyScratch {
+        self.complete = false;
+        self.pivots = (f64::INFINITY, 0.0);
+        self.take_sizes(matrix);
+        CholeskyScratch::new(self.triangles.iter().map(Dense::rows).max().unwrap_or(0))
+    }
+
+    /// Block `i`, once it and its coupling to the next hold the matrix's values.
+    fn eliminate(
+        &mut self,
+        i: usize,
+        scratch: &mut CholeskyScratch,
+    ) -> Result<(), NotPositiveDefinite> {
+        let triangle = &mut self.triangles[i];
+        self.original.clear();
+        self.original
+            .extend((0..triangle.rows()).map(|k| triangle.get(k, k)));
+        if i > 0 {
+            subtract_gram_lower(&self.couplings[i - 1], triangle);
+        }
+        let outcome = cholesky_lower(triangle, scratch);
+        self.check_pivots(i, outcome)?;
+        if let Some(coupling) = self.couplings.get_mut(i) {
+            let columns = coupling.cols();
+            solve_lower(&self.triangles[i], coupling.as_mut_slice(), columns);
+        }
+        Ok(())
+    }
+
     fn take_sizes(&mut self, matrix: &BlockTridiagonal) {
         let blocks = matrix.block_count();
         self.offsets.clear();
@@ -233,21 +279,21 @@ impl Factor {
     /// Looks at every pivot of block `i`, the failing one of the kernel last.
     fn check_pivots(
         &mut self,
-        matrix: &BlockTridiagonal,
         i: usize,
         outcome: Result<(), usize>,
     ) -> Result<(), NotPositiveDefinite> {
-        let (triangle, original) = (&self.triangles[i], matrix.diagonal(i));
+        let (triangle, original) = (&self.triangles[i], &self.original);
         let failure = |k: usize, pivot: f64| NotPositiveDefinite {
             index: self.offsets[i] + k,
             pivot,
-            diagonal: original.get(k, k),
+            diagonal: original[k],
         };
         let (mut smallest, mut largest) = self.pivots;
-        for k in 0..outcome.err().unwrap_or(triangle.rows()) {
+        let passed = outcome.err().unwrap_or(triangle.rows());
+        for (k, diagonal) in original[..passed].iter().enumerate() {
             let pivot = triangle.get(k, k) * triangle.get(k, k);
             // The first comparison is false for NaN.
-            if !(pivot > LOST * original.get(k, k) && pivot < f64::INFINITY) {
+            if !(pivot > LOST * diagonal && pivot < f64::INFINITY) {
                 return Err(failure(k, pivot));
             }
             smallest = smallest.min(pivot);
@@ -377,6 +423,17 @@ mod tests {
             used.refactor(&failing).unwrap_err();
             used.refactor(&matrix).unwrap();
             let fresh = Factor::new(&matrix).unwrap();
+            let mut consumed = matrix.clone();
+            let mut consuming = used.clone();
+            consuming.refactor_consuming(&mut consumed).unwrap();
+            let everything: Vec<usize> = (0..matrix.len()).collect();
+            assert_eq!(
+                bits(consuming.flexibility(&everything).as_slice()),
+                bits(fresh.flexibility(&everything).as_slice())
+            );
+            // The memory handed back serves for the same matrix again.
+            consumed.set_zero();
+            assert_eq!(consumed, BlockTridiagonal::new(sizes));
             let rhs = random_columns(&mut rng, matrix.len(), 3);
             let (mut a, mut b) = (rhs.clone(), rhs);
             used.solve_in_place(&mut a);
@@ -412,8 +469,8 @@ mod tests {
         let mut rng = Xoshiro256PlusPlus::seed_from_u64(4);
         let sizes = [5, 90, 3, 37];
         let matrix = random_positive_definite(&mut rng, &sizes);
-        for i in 0..sizes.len() {
-            for k in [0, sizes[i] / 2, sizes[i] - 1] {
+        for (i, size) in sizes.into_iter().enumerate() {
+            for k in [0, size / 2, size - 1] {
                 let mut spoilt = matrix.clone();
                 let entry = matrix.diagonal(i).get(k, k);
                 spoilt.diagonal_mut(i).set(k, k, -entry);

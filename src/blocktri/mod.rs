@@ -25,6 +25,7 @@
 mod dense;
 mod error;
 mod factor;
+mod leading;
 mod matrix;
 mod modes;
 

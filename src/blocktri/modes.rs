@@ -3,6 +3,7 @@
 
 use super::dense::{Dense, symmetric_eigen};
 use super::error::ModesError;
+use super::leading::leading_eigenpairs;
 
 /// The lowest eigenpairs, seen at the freedoms that carry mass.
 #[derive(Debug, Clone, PartialEq)]
@@ -65,8 +66,34 @@ pub fn modes_from_flexibility(
         });
     }
 
-    let (values, vectors) =
-        symmetric_eigen(&congruent(flexibility, &roots)).map_err(|_| ModesError::NoConvergence)?;
+    let (values, vectors) = largest(&congruent(flexibility, &roots), count)?;
+    let mut eigenvalues = Vec::with_capacity(count);
+    let mut shapes = Dense::zeros(size, count);
+    for (j, value) in values.iter().enumerate() {
+        let psi = vectors.col(j);
+        eigenvalues.push(1.0 / value);
+        let sign = sign(psi);
+        let groups = shapes.col_mut(j).chunks_exact_mut(3);
+        for ((phi, psi), l) in groups.zip(psi.chunks_exact(3)).zip(&roots) {
+            phi[2] = sign * psi[2] / l[2][2];
+            phi[1] = (sign * psi[1] - l[2][1] * phi[2]) / l[1][1];
+            phi[0] = (sign * psi[0] - l[1][0] * phi[1] - l[2][0] * phi[2]) / l[0][0];
+        }
+    }
+    Ok(FloorModes {
+        eigenvalues,
+        shapes,
+    })
+}
+
+/// The `count` largest eigenvalues, descending, and their eigenvectors, by the
+/// quick way where it can prove its answer.
+fn largest(a: &Dense, count: usize) -> Result<(Vec<f64>, Dense), ModesError> {
+    if let Some(found) = leading_eigenpairs(a, count) {
+        return Ok(found);
+    }
+    let size = a.rows();
+    let (values, vectors) = symmetric_eigen(a).map_err(|_| ModesError::NoConvergence)?;
     let largest = values[size - 1];
     // Below this an eigenvalue is rounding of the largest: as a wanted one it
     // would give a meaningless lambda, and well below zero it is a real fault.
@@ -83,24 +110,11 @@ pub fn modes_from_flexibility(
             });
         }
     }
-
-    let mut eigenvalues = Vec::with_capacity(count);
-    let mut shapes = Dense::zeros(size, count);
-    for j in 0..count {
-        let psi = vectors.col(size - 1 - j);
-        eigenvalues.push(1.0 / values[size - 1 - j]);
-        let sign = sign(psi);
-        let groups = shapes.col_mut(j).chunks_exact_mut(3);
-        for ((phi, psi), l) in groups.zip(psi.chunks_exact(3)).zip(&roots) {
-            phi[2] = sign * psi[2] / l[2][2];
-            phi[1] = (sign * psi[1] - l[2][1] * phi[2]) / l[1][1];
-            phi[0] = (sign * psi[0] - l[1][0] * phi[1] - l[2][0] * phi[2]) / l[0][0];
-        }
-    }
-    Ok(FloorModes {
-        eigenvalues,
-        shapes,
-    })
+    let columns: Vec<Vec<f64>> = (0..count)
+        .map(|j| vectors.col(size - 1 - j).to_vec())
+        .collect();
+    let values = values.into_iter().rev().take(count).collect();
+    Ok((values, Dense::from_columns(&columns)))
 }
 
 /// Finite, and symmetric to nine digits of what the diagonal allows.
@@ -130,8 +144,8 @@ fn root(m: &[[f64; 3]; 3]) -> Option<[[f64; 3]; 3]> {
     for i in 0..3 {
         for j in 0..=i {
             let scale = (m[i][i] * m[j][j]).sqrt();
-            // Negated, so that NaN fails.
-            if !((m[i][j] - m[j][i]).abs() <= 1e-9 * scale) {
+            let skew = (m[i][j] - m[j][i]).abs();
+            if skew.is_nan() || scale.is_nan() || skew > 1e-9 * scale {
                 return None;
             }
             let rest = m[i][j] - (0..j).map(|k| l[i][k] * l[j][k]).sum::<f64>();
@@ -148,7 +162,7 @@ fn root(m: &[[f64; 3]; 3]) -> Option<[[f64; 3]; 3]> {
     Some(l)
 }
 
-/// Lower triangle (with whole diagonal blocks) of `L' F L`, `L` block-diagonal.
+/// `L' F L`, `L` block-diagonal, symmetric to the bit.
 fn congruent(f: &Dense, roots: &[[[f64; 3]; 3]]) -> Dense {
     let mut out = Dense::zeros(f.rows(), f.cols());
     for (b, right) in roots.iter().enumerate() {
@@ -156,10 +170,10 @@ fn congruent(f: &Dense, roots: &[[[f64; 3]; 3]]) -> Dense {
             // F_ab L_b, then L_a' times that.
             let mut product = [[0.0; 3]; 3];
             for (j, column) in product.iter_mut().enumerate() {
-                for k in j..3 {
+                for (k, row) in right.iter().enumerate().skip(j) {
                     let source = &f.col(3 * b + k)[3 * a..3 * a + 3];
                     for (entry, value) in column.iter_mut().zip(source) {
-                        *entry += value * right[k][j];
+                        *entry += value * row[j];
                     }
                 }
             }
@@ -169,6 +183,11 @@ fn congruent(f: &Dense, roots: &[[[f64; 3]; 3]]) -> Dense {
                     *entry = (i..3).map(|k| left[k][i] * column[k]).sum();
                 }
             }
+        }
+    }
+    for j in 0..out.cols() {
+        for i in j + 1..out.rows() {
+            out.set(j, i, out.get(i, j));
         }
     }
     out

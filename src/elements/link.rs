@@ -169,6 +169,7 @@ fn root_share<D: Scalar>(depth: D, height: f64, breadth: D, wall: D) -> D {
 mod tests {
     use super::super::testing::*;
     use super::*;
+    use crate::model::tower::Point;
     use num_dual::Dual64;
 
     fn link(ends: [LinkEnd; 2], breadth: Option<f64>) -> LinkBeam {

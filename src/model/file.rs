@@ -102,6 +102,22 @@ pub(super) struct SizeGroupText {
     pub breadth_mm: Option<f64>,
 }
 
+impl SizeGroupText {
+    /// Without sizes or rules.
+    pub fn empty(at: &At, id: &str) -> SizeGroupText {
+        SizeGroupText {
+            at: at.clone(),
+            id: id.to_owned(),
+            zones: Vec::new(),
+            vary: None,
+            non_increasing: false,
+            max_drop_mm: None,
+            zones_move_together: false,
+            breadth_mm: None,
+        }
+    }
+}
+
 #[derive(Debug, Clone)]
 pub(super) struct SizeZoneText {
     pub at: At,
@@ -514,7 +530,8 @@ pub(super) fn read_document(document: &Section<'_>) -> TowerText {
     if let Some(section) = document.section("limits") {
         text.limits_at = section.at.clone();
         for ((key, kind, ..), limit) in LIMITS.iter().zip(&mut text.limits) {
-            if let Some(section) = section.section(key) {
+            if let Some(section) = section.section_like(key, &format!("{{ {} = ... }}", kind.key()))
+            {
                 limit.number = section.number(kind.key(), kind.bound());
                 limit.clause = section.text("clause");
                 limit.source = section.text("source");
@@ -760,6 +777,7 @@ pub(super) fn read_vary(
                 vary.max.to_string(),
                 format!("{min_key} ({}) or more", vary.min.unwrap_or_default()),
             );
+            vary.max = f64::NAN;
         }
     }
     section.finish();

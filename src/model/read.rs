@@ -55,24 +55,36 @@ pub fn read_tower(path: &Path) -> Result<TowerFile, Faults> {
 ///
 /// # Errors
 /// All faults of the text at once, by line. Where the text is not TOML, only
-/// that is reported.
+/// the first place is reported.
 pub fn parse_tower(text: &str, file_name: &str) -> Result<TowerFile, Faults> {
     let log = Log::new(text);
     let (document, errors) = DeTable::parse_recoverable(text);
     if !errors.is_empty() {
-        let list = errors
+        // What a parser makes of the lines after its first stumble is guesswork.
+        let line_of = |error: &toml::de::Error| error.span().map(|span| log.line(span.start));
+        let line = errors.iter().map(line_of).min().flatten();
+        let mut messages: Vec<String> = errors
             .iter()
-            .map(|error| Fault {
-                line: error.span().map(|span| log.line(span.start)),
-                key: String::new(),
-                found: format!(
-                    "text that is not TOML ({})",
-                    error.message().replace('\n', "; ")
-                ),
-                allowed: "TOML 1.1".to_owned(),
-                hint: None,
-            })
+            .filter(|error| line_of(error) == line)
+            .map(|error| error.message().replace('\n', "; "))
             .collect();
+        let comma = messages
+            .iter()
+            .position(|message| message.starts_with("missing comma"));
+        if let Some(comma) = comma {
+            // The rest is the parser's view of what follows the gap.
+            messages = vec![messages.swap_remove(comma)];
+        }
+        let hint =
+            comma.map(|_| "a bracket may be missing at the end of the line before".to_owned());
+        let fault = Fault {
+            line,
+            key: String::new(),
+            found: format!("text that is not TOML ({})", messages.join("; ")),
+            allowed: "TOML 1.1".to_owned(),
+            hint,
+        };
+        let list = vec![fault];
         return Err(Faults::sorted(file_name, list));
     }
 

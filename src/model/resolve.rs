@@ -13,8 +13,8 @@ use super::tower::*;
 pub(super) struct Resolved {
     pub tower: Tower,
     pub places: Places,
-    /// Whether every wall, column, beam, link and arm of the file is in the
-    /// model. If not, rules that would blame an absent member are not applied.
+    /// Whether every wall and column of the file is in the model. If not, rules
+    /// that would blame an absent one are not applied.
     pub complete: bool,
 }
 
@@ -43,6 +43,10 @@ pub(super) struct ArmPlaces {
     pub places: Vec<At>,
 }
 
+/// Index of a group or option whose name does not exist. The fault has been
+/// reported; the member stays, so that its neighbours are not blamed for its absence.
+const UNKNOWN: usize = usize::MAX;
+
 const CRACKING_SOURCE: &str = "IS 16700:2017 7.2 Table 6, from memory";
 pub(super) const STATED: &str = "stated in the tower file";
 pub(super) const MODULUS_SOURCE: &str = "IS 456:2000 6.2.3.1";
@@ -57,7 +61,8 @@ pub(super) fn default_imposed_share(imposed: f64) -> f64 {
 
 /// Mass of a floor whose loads are stated: uniform over its extent.
 pub(super) fn mass_of_loads(extent: Extent, dead: f64, imposed: f64, share: f64) -> FloorMass {
-    let mass = (dead + share * imposed) * area(extent) / GRAVITY;
+    // Rounded through tonnes, so that the mass itself can be printed exactly.
+    let mass = (dead + share * imposed) * area(extent) / GRAVITY / 1e3 * 1e3;
     FloorMass {
         mass,
         centre: centre(extent),
@@ -99,20 +104,32 @@ pub(super) fn grade_modulus(strength_mpa: f64) -> f64 {
 
 /// Value at `storey` of a run that goes linearly from its first to its last.
 pub(super) fn along_run(range: StoreyRange, ends: (f64, f64), storey: usize) -> f64 {
-    if range.first == range.last {
+    if ends.0 == ends.1 {
         return ends.0;
     }
     let share = (storey - range.first) as f64 / (range.last - range.first) as f64;
     ends.0 * (1.0 - share) + ends.1 * share
 }
 
-/// Torque about the extent's centre of a force with an eccentricity, N m.
-pub(super) fn eccentric_torque(direction: Direction, force: f64, eccentricity: f64) -> f64 {
-    match direction {
+/// Torque of one storey about its extent's centre, N m: what is stated (kNm) and
+/// what the force's eccentricity (m) adds.
+pub(super) fn torque_of(
+    direction: Direction,
+    stated_knm: f64,
+    force: f64,
+    eccentricity: f64,
+) -> f64 {
+    let stated = stated_knm * 1e3;
+    if eccentricity == 0.0 {
+        return stated;
+    }
+    let added = match direction {
         // A force along X that acts at y = e turns clockwise.
         Direction::X => -force * eccentricity,
         Direction::Y => force * eccentricity,
-    }
+    };
+    // Rounded through the file's unit, so that the sum can be printed exactly.
+    (stated + added) / 1e3 * 1e3
 }
 
 pub(super) fn limits_from(values: [Limit; 7]) -> Limits {
@@ -172,12 +189,18 @@ impl<'t> Names<'t> {
 
     /// Reports a name that does not exist. Empty names have been reported already.
     fn find(&self, name: &str, at: &At, log: &Log) -> Option<usize> {
-        if name.is_empty() {
+        let table = format!("{}s", self.kind.replace(' ', "_"));
+        if name.is_empty() || (self.index.is_empty() && log.is_misspelt(&table)) {
             return None;
         }
         let found = self.index.get(name).copied();
         if found.is_none() {
-            let allowed = format!("the id of a {}", self.kind);
+            let article = if self.kind.starts_with('o') {
+                "an"
+            } else {
+                "a"
+            };
+            let allowed = format!("the id of {article} {}", self.kind);
             let hint = match nearest(name, self.index.keys().copied()) {
                 Some(word) => Some(format!("did you mean \"{word}\"?")),
                 None if self.index.is_empty() => Some(format!("the file has no {}", self.kind)),
@@ -309,9 +332,9 @@ impl Resolver<'_> {
             let ends = self.ends(&node_names, at, &wall.from, &wall.to);
             let storeys = self.range(wall.storeys, at);
             let option = self.option(&option_names, at, wall.option.as_deref());
-            let (Some(group), Some((from, to)), Some(storeys), Some(option)) =
-                (group, ends, storeys, option)
-            else {
+            let group = group.unwrap_or(UNKNOWN);
+            let option = option.unwrap_or(Some(UNKNOWN));
+            let (Some((from, to)), Some(storeys)) = (ends, storeys) else {
                 self.complete = false;
                 continue;
             };
@@ -358,7 +381,8 @@ impl Resolver<'_> {
             let group = column_group_names.find(&column.group, &at.key("group"), log);
             let node = node_names.find(&column.node, &at.key("node"), log);
             let storeys = self.range(column.storeys, at);
-            let (Some(group), Some(node), Some(storeys)) = (group, node, storeys) else {
+            let group = group.unwrap_or(UNKNOWN);
+            let (Some(node), Some(storeys)) = (node, storeys) else {
                 self.complete = false;
                 continue;
             };
@@ -415,7 +439,6 @@ impl Resolver<'_> {
                 )
             });
             let (Some(group), Some((from, to)), Some(storeys)) = (group, ends, storeys) else {
-                self.complete = false;
                 continue;
             };
             beams.push(Beam {
@@ -471,7 +494,6 @@ impl Resolver<'_> {
             let (Some(group), Some((from, to)), Some(storeys), Some(option)) =
                 (group, ends, storeys, option)
             else {
-                self.complete = false;
                 continue;
             };
             let (id, open_end) = (link.id.clone(), link.open_end);
@@ -630,7 +652,7 @@ impl Resolver<'_> {
 
     fn mass_is_plausible(&self, group: &StoreyText, extent: Extent, mass_t: f64) {
         let per_area = mass_t / area(extent);
-        if per_area > 5.0 || per_area < 0.1 {
+        if per_area > 5.0 || (per_area < 0.1 && per_area > 0.0) {
             let hint = if (0.1..=5.0).contains(&(per_area / 9.81)) {
                 format!(
                     "{mass_t} looks like a weight in kN; write {} t",
@@ -786,10 +808,9 @@ impl Resolver<'_> {
         }
     }
 
-    fn size_zones(&mut self, group: &SizeGroupText, key: &'static str) -> Vec<SizeZone> {
+    fn size_zones(&self, group: &SizeGroupText, key: &'static str) -> Vec<SizeZone> {
         let ranges = self.zone_ranges(group.zones.iter().map(|zone| (&zone.at, zone.storeys)));
         let Some(ranges) = ranges else {
-            self.complete = false;
             return Vec::new();
         };
         ranges
@@ -815,10 +836,9 @@ impl Resolver<'_> {
             .collect()
     }
 
-    fn column_zones(&mut self, group: &ColumnGroupText) -> Vec<ColumnZone> {
+    fn column_zones(&self, group: &ColumnGroupText) -> Vec<ColumnZone> {
         let ranges = self.zone_ranges(group.zones.iter().map(|zone| (&zone.at, zone.storeys)));
         let Some(ranges) = ranges else {
-            self.complete = false;
             return Vec::new();
         };
         ranges
@@ -885,7 +905,9 @@ impl Resolver<'_> {
         } else {
             given
         };
-        if given.2 < stated_min || given.2 > text.max {
+        if stated_min.is_nan() || text.max.is_nan() {
+            // Bounds that are themselves at fault say nothing about sizes.
+        } else if given.2 < stated_min || given.2 > text.max {
             self.log.fault(
                 &given_key.0.key(given_key.1),
                 given.2.to_string(),
@@ -916,7 +938,7 @@ impl Resolver<'_> {
         })
     }
 
-    fn arms(&mut self, text: Option<&ArmsText>, nodes: &Names<'_>) -> (ArmSystem, ArmPlaces) {
+    fn arms(&self, text: Option<&ArmsText>, nodes: &Names<'_>) -> (ArmSystem, ArmPlaces) {
         let Some(text) = text else {
             return (ArmSystem::default(), ArmPlaces::default());
         };
@@ -931,12 +953,11 @@ impl Resolver<'_> {
                     system.arms.push(Arm { from, to });
                     places.arms.push(arm.at.clone());
                 }
-                None => self.complete = false,
+                None => continue,
             }
         }
         for place in &text.places {
             let Some(storeys) = self.range(place.storeys, &place.at) else {
-                self.complete = false;
                 continue;
             };
             let Some(thickness) = place.thickness_mm.or(text.thickness_mm) else {
@@ -993,9 +1014,8 @@ impl Resolver<'_> {
         let Some(text) = text else { return none };
         self.places.core = text.at.clone();
         for name in &text.nodes {
-            match names.find(name, &text.at.key("nodes"), self.log) {
-                Some(index) => nodes[index].moves_with_core = true,
-                None => self.complete = false,
+            if let Some(index) = names.find(name, &text.at.key("nodes"), self.log) {
+                nodes[index].moves_with_core = true;
             }
         }
         let (x, y) = text.offset_m;
@@ -1067,7 +1087,11 @@ impl Resolver<'_> {
         cases
             .iter()
             .map(|case| {
-                let forces = self.runs(case, "forces", &case.forces, true);
+                let forces: Vec<f64> = self
+                    .runs(case, "forces", &case.forces, true)
+                    .iter()
+                    .map(|force| force * 1e3)
+                    .collect();
                 let torques = self.runs(case, "torques", &case.torques, false);
                 let direction = case.direction.unwrap_or(Direction::X);
                 let action = case.action.unwrap_or(Action::Wind);
@@ -1075,7 +1099,7 @@ impl Resolver<'_> {
                     .iter()
                     .zip(&forces)
                     .map(|(torque, force)| {
-                        torque + eccentric_torque(direction, *force, case.eccentricity_m)
+                        torque_of(direction, *torque, *force, case.eccentricity_m)
                     })
                     .collect();
                 LateralCase {
@@ -1093,7 +1117,7 @@ impl Resolver<'_> {
             .collect()
     }
 
-    /// Values of all storeys, in N or N m.
+    /// Values of all storeys, in the file's unit.
     fn runs(&self, case: &CaseText, key: &str, runs: &[RunText], cover: bool) -> Vec<f64> {
         let mut values: Vec<Option<f64>> = vec![None; self.count];
         let mut sound = true;
@@ -1104,7 +1128,7 @@ impl Resolver<'_> {
             };
             let mut taken = Vec::new();
             for storey in range.first..=range.last {
-                let value = along_run(range, run.ends, storey) * 1000.0;
+                let value = along_run(range, run.ends, storey);
                 if values[storey - 1].replace(value).is_some() {
                     taken.push(storey);
                 }

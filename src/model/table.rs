@@ -21,6 +21,7 @@ pub(super) struct At {
     pub line: Option<usize>,
     pub path: String,
     keys: Rc<Vec<(String, usize)>>,
+    renamed: Option<(&'static str, &'static str)>,
 }
 
 impl At {
@@ -34,6 +35,10 @@ impl At {
 
     /// Place of a key of this table; the table's own line when it is not stated.
     pub fn key(&self, key: &str) -> At {
+        let key = match self.renamed {
+            Some((name, written)) if name == key => written,
+            _ => key,
+        };
         let path = if self.path.is_empty() {
             key.to_owned()
         } else {
@@ -48,7 +53,21 @@ impl At {
             line: stated.or(self.line),
             path,
             keys: Rc::default(),
+            renamed: None,
         }
+    }
+
+    /// Place of something generated from this table.
+    pub fn part(&self, kind: &str, id: &str) -> At {
+        At {
+            path: format!("{} ({kind} \"{id}\")", self.path),
+            ..self.clone()
+        }
+    }
+
+    /// Says which key of the file stands behind a key of the model.
+    pub fn rename(&mut self, key: &'static str, written: &'static str) {
+        self.renamed = Some((key, written));
     }
 
     pub fn states(&self, key: &str) -> bool {
@@ -62,6 +81,9 @@ pub(super) struct Log {
     faults: RefCell<Vec<Fault>>,
     warnings: RefCell<Vec<(Option<usize>, String)>>,
     line_starts: Vec<usize>,
+    /// Tables of the file whose names are misspelt; their entries are not to
+    /// be missed a second time.
+    misspelt: RefCell<Vec<&'static str>>,
 }
 
 impl Log {
@@ -108,6 +130,10 @@ impl Log {
         });
     }
 
+    pub fn is_misspelt(&self, table: &str) -> bool {
+        self.misspelt.borrow().contains(&table)
+    }
+
     pub fn warn(&self, at: &At, text: impl AsRef<str>) {
         let text = format!("{}: {}", at.path, text.as_ref());
         self.warnings.borrow_mut().push((at.line, text));
@@ -152,7 +178,7 @@ impl Bound {
     fn hint(&self, value: f64) -> Option<String> {
         let guesses: &[(&str, f64)] = match self.unit {
             "mm" => &[("m", 1000.0), ("cm", 10.0)],
-            "m" => &[("mm", 1e-3), ("cm", 1e-2)],
+            "m" if value.abs() >= 500.0 => &[("mm", 1e-3)],
             "GPa" => &[("MPa", 1e-3), ("kPa", 1e-6), ("Pa", 1e-9)],
             "kg/m3" => &[("t/m3", 1000.0), ("kN/m3", 101.97)],
             "kPa" => &[("Pa", 1e-3)],
@@ -205,6 +231,7 @@ impl<'a> Section<'a> {
             line,
             path,
             keys: Rc::new(keys),
+            renamed: None,
         };
         Section {
             table,
@@ -467,9 +494,14 @@ impl<'a> Section<'a> {
     }
 
     pub fn section(&self, key: &'static str) -> Option<Section<'a>> {
+        self.section_like(key, "a table")
+    }
+
+    /// A table, with what to say when something else is found.
+    pub fn section_like(&self, key: &'static str, allowed: &str) -> Option<Section<'a>> {
         let value = self.look(key)?;
         let DeValue::Table(table) = value.get_ref() else {
-            self.wrong(key, value, "a table");
+            self.wrong(key, value, allowed);
             return None;
         };
         let at = self.at.key(key);
@@ -534,6 +566,9 @@ impl<'a> Section<'a> {
             );
             misspelt.extend(suggestion);
         }
+        if self.at.path.is_empty() {
+            self.log.misspelt.borrow_mut().extend(&misspelt);
+        }
         for (key, allowed) in self.missing.borrow().iter() {
             // A misspelt key has been reported already; saying that the right one
             // is missing would be the same fault twice.
@@ -548,16 +583,27 @@ impl<'a> Section<'a> {
     }
 }
 
-/// The word nearest to `name` by edit distance, if it is near at all.
-pub(super) fn nearest<'w>(name: &str, words: impl Iterator<Item = &'w str>) -> Option<&'w str> {
-    words
+/// The word nearest to `name` by edit distance, if it is near at all, or one
+/// that `name` begins.
+pub(super) fn nearest<'w>(
+    name: &str,
+    words: impl Iterator<Item = &'w str> + Clone,
+) -> Option<&'w str> {
+    let near = words
+        .clone()
         .map(|word| (strsim::damerau_levenshtein(name, word), word))
         .filter(|(distance, word)| {
             let length = name.len().max(word.len());
             *distance <= 1 + length / 4 && *distance < length
         })
         .min()
-        .map(|(_, word)| word)
+        .map(|(_, word)| word);
+    let begun = || {
+        words
+            .filter(|word| word.starts_with(&format!("{name}_")))
+            .min()
+    };
+    near.or_else(begun)
 }
 
 fn list_words<'w>(words: impl Iterator<Item = &'w str>) -> String {

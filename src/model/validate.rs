@@ -33,8 +33,8 @@ pub(super) fn validate(resolved: &Resolved, log: &Log) {
     rules.core_joints();
     rules.places_of_arms(&tower.outriggers, &resolved.places.outriggers);
     rules.places_of_arms(&tower.belts, &resolved.places.belts);
+    rules.covered();
     if resolved.complete {
-        rules.covered();
         rules.every_storey_stands();
         rules.support();
         rules.beam_ends();
@@ -133,18 +133,21 @@ impl Rules<'_> {
             )
         };
         for (wall, at) in tower.walls.iter().zip(&self.places.walls) {
-            let group = &tower.wall_groups[wall.group];
-            self.cover(sizes(&group.zones), wall.storeys, at, &group.id);
+            if let Some(group) = tower.wall_groups.get(wall.group) {
+                self.cover(sizes(&group.zones), wall.storeys, at, &group.id);
+            }
         }
         for (link, at) in tower.links.iter().zip(&self.places.links) {
-            let group = &tower.link_groups[link.group];
-            self.cover(sizes(&group.zones), link.storeys, at, &group.id);
+            if let Some(group) = tower.link_groups.get(link.group) {
+                self.cover(sizes(&group.zones), link.storeys, at, &group.id);
+            }
         }
         for (column, at) in tower.columns.iter().zip(&self.places.columns) {
-            let group = &tower.column_groups[column.group];
-            let first = group.zones.first().map(|zone| zone.storeys);
-            let last = group.zones.last().map(|zone| zone.storeys);
-            self.cover(span(first, last), column.storeys, at, &group.id);
+            if let Some(group) = tower.column_groups.get(column.group) {
+                let first = group.zones.first().map(|zone| zone.storeys);
+                let last = group.zones.last().map(|zone| zone.storeys);
+                self.cover(span(first, last), column.storeys, at, &group.id);
+            }
         }
     }
 

@@ -3,9 +3,9 @@
 //!
 //! argmin's own states hold the best point by cost alone, which is wrong with
 //! constraints (an infeasible point is often the cheapest): `SearchState` ranks
-//! by violation first. argmin's observers must be `'static`, so each analysis
-//! is told to our observer by the notebook; the executor's observers can still
-//! be attached and see iterations.
+//! by violation first. argmin's observers must be `'static`, which a borrowed
+//! observer is not: each analysis is told to ours by the notebook instead, and
+//! argmin's own Ctrl-C handler (one per process) stays off.
 
 use std::cell::RefCell;
 use std::collections::HashMap;
@@ -19,8 +19,12 @@ use super::constrained::TrustRegion;
 use super::notebook::Notebook;
 use super::outcome::Stop;
 
-/// Runs the trust-region method until it stops or the notebook's limit is met.
-pub(crate) fn run<'a>(method: TrustRegion, notebook: Notebook<'a>) -> (Stop, Notebook<'a>) {
+/// Runs the trust-region method until it stops or the notebook's limit is met;
+/// returns why, the index of the point it ended at, and the notebook.
+pub(crate) fn run<'a>(
+    method: TrustRegion,
+    notebook: Notebook<'a>,
+) -> (Stop, Option<usize>, Notebook<'a>) {
     // A step spends an analysis or shrinks the region, so that this many steps
     // are never reached; they only keep the executor's own limit out of play.
     let steps = 100 * (notebook.settings.max_analyses as u64 + 100);
@@ -36,7 +40,7 @@ pub(crate) fn run<'a>(method: TrustRegion, notebook: Notebook<'a>) -> (Stop, Not
         Ok(result) => {
             let stop = result.solver.stop.unwrap_or(Stop::Converged);
             match result.problem.problem {
-                Some(notebook) => (stop, notebook.into_inner()),
+                Some(notebook) => (stop, result.solver.method.current(), notebook.into_inner()),
                 None => unreachable!("the executor hands the problem back"),
             }
         }

@@ -44,6 +44,8 @@ pub(crate) enum Answer {
         proven: bool,
     },
     Infeasible,
+    /// The node limit came before any answer.
+    Undecided,
     /// Neither an answer nor a proof that there is none.
     Failed,
 }
@@ -56,6 +58,10 @@ const DROP: f64 = 1e-6;
 const ROW_TOLERANCE: f64 = 1e-6;
 /// Asked of microlp, whose default of 1e-7 would blur the last Newton steps.
 const SOLVER_TOLERANCE: f64 = 1e-9;
+/// Relative gap at which branch and bound is content: programs are asked again
+/// and again with a better objective demanded, so that the last word is always
+/// a proof of infeasibility or the node limit, not this gap.
+const GAP: f64 = 1e-4;
 /// Moves of the repair before it gives up, per column.
 const REPAIR_MOVES: usize = 20;
 
@@ -154,7 +160,7 @@ impl LinearProgram {
         if answer == Answer::Failed {
             answer = self.attempt(whole, node_limit, false);
         }
-        if answer == Answer::Failed && whole {
+        if matches!(answer, Answer::Failed | Answer::Undecided) && whole {
             answer = self.round_and_repair(node_limit);
         }
         answer
@@ -181,7 +187,7 @@ impl LinearProgram {
         let mut options = SolveOptions::default();
         options.node_limit = whole.then_some(node_limit as u64);
         options.presolve = presolve;
-        options.mip_gap = 0.0;
+        options.mip_gap = GAP;
         options.tolerances.feasibility = SOLVER_TOLERANCE;
         match problem.solve_with(options) {
             Ok(SolveOutcome::Solution(solution)) => {
@@ -193,7 +199,8 @@ impl LinearProgram {
                 }
             }
             Err(microlp::Error::Infeasible) => Answer::Infeasible,
-            Ok(SolveOutcome::Interrupted(_)) | Err(_) => Answer::Failed,
+            Ok(SolveOutcome::Interrupted(_)) => Answer::Undecided,
+            Err(_) => Answer::Failed,
         }
     }
 
@@ -237,7 +244,7 @@ impl LinearProgram {
         let start = match self.attempt(false, node_limit, true) {
             Answer::Found { values, .. } => values,
             Answer::Infeasible => return Answer::Infeasible,
-            Answer::Failed => self
+            Answer::Failed | Answer::Undecided => self
                 .columns
                 .iter()
                 .map(|c| 0.5 * (c.lower + c.upper))

@@ -19,13 +19,20 @@
 //! chord over the region. An analysed point that such softened rows no longer
 //! forbid is shut out by binary columns: some n_j must differ.
 //!
+//! A linearisation says too little of a curved constraint, so that proposals
+//! tend to fail by a little, over and over when there are many variables. After
+//! every miss one proposal therefore keeps a margin to all constraints, as large
+//! as the model's error was there; only programs without margin prove anything.
+//!
 //! The region is first a few modules around the continuous optimum, then around
 //! the best point, then the whole lattice. When all three give nothing, the
 //! neighbours of the best point (one module in one variable, or one up and
 //! another down) are polled, if no cut forbids them and the linear models do so
 //! by a small amount at most: what remains to distrust is the model, not the
-//! program. With nothing feasible at hand the same is done elastically, for the
-//! sum of violations in place of the objective.
+//! program. If any constraint has shown itself nonconvex, an elastic program
+//! then names, again and again, the better point that the models forbid by
+//! least, until that is more than is worth doubting. With nothing feasible at
+//! hand the sum of violations is sought to be less in place of the objective.
 //!
 //! Sources: M. A. Duran and I. E. Grossmann 1986, Math. Prog. 36 (outer
 //! approximation); R. Fletcher and S. Leyffer 1994, Math. Prog. 66 (its
@@ -34,7 +41,7 @@
 
 use std::collections::BTreeMap;
 
-use super::frame::{Frame, module_value, modules_within};
+use super::frame::{Frame, binding_lattice, module_value, modules_within};
 use super::linear_program::{Answer, LinearProgram};
 use super::notebook::{Linearisation, Notebook, Refusal, distance_squared, rows_hold, slope};
 use super::outcome::Stop;
@@ -47,25 +54,42 @@ const OBJECTIVE_WEIGHT: f64 = 1e-4;
 const LESS_VIOLATION: f64 = 1e-3;
 /// With continuous variables about, gains below this relative amount are left.
 const MIXED_IMPROVEMENT: f64 = 1e-4;
-/// Points shut out by binary columns in one program, at most.
-const MAX_SHUT_OUT: usize = 20;
+/// Binary columns that shut points out of one program, at most.
+const MAX_BINARIES: usize = 240;
 /// Objective linearisations in one program, at most.
 const MAX_OBJECTIVES: usize = 30;
 
 pub(crate) struct LatticeSearch {
     /// Where the continuous stage ended.
     relaxed: Vec<f64>,
-    region: Region,
+    ask: Ask,
     trust: Trust,
+    /// Likely points tried since the last improvement.
+    tries: usize,
+    /// Proposals in a row that did not improve.
+    misses: usize,
+    /// Margin of cautious proposals: the model's largest error at the latest
+    /// miss, halved when nothing better keeps it.
+    caution: f64,
     /// All variables lie on lattices, so that a point can be shut out.
     pure: bool,
 }
 
+/// What is asked next.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-enum Region {
+enum Ask {
+    /// A better point near the continuous optimum.
     AroundRelaxed,
+    /// A better point near the best one.
     AroundBest,
+    /// A better point anywhere.
     Whole,
+    /// A point that violates less, while none is feasible.
+    LessViolation,
+    /// The neighbours.
+    Poll,
+    /// The better point that the models forbid by least.
+    Likely,
 }
 
 /// How far the linearisations of nonconvex constraints are believed.
@@ -89,17 +113,15 @@ impl Trust {
     }
 }
 
-enum Proposal {
-    Point(Vec<f64>),
-    Nothing,
-}
-
 impl LatticeSearch {
     pub fn new(variables: &[Variable], relaxed: &[f64]) -> Self {
         LatticeSearch {
             relaxed: relaxed.to_vec(),
-            region: Region::AroundRelaxed,
+            ask: Ask::AroundRelaxed,
             trust: Trust::Own,
+            tries: 0,
+            misses: 0,
+            caution: 0.0,
             pure: variables
                 .iter()
                 .all(|v| v.lattice.is_some() || v.lower == v.upper),
@@ -108,58 +130,100 @@ impl LatticeSearch {
 
     /// One integer program with its analysis, or one poll; tells when it is over.
     pub fn step(&mut self, notebook: &mut Notebook) -> Option<Stop> {
-        let feasible = notebook.best().is_some();
-        let proposal = match self.propose(notebook, false) {
-            Proposal::Nothing if self.region == Region::Whole && !feasible => {
-                self.propose(notebook, true)
-            }
-            proposal => proposal,
+        if self.ask == Ask::Poll {
+            return match self.poll(notebook) {
+                Some(Stop::NoBetterFound) => self.go_on(notebook),
+                other => other,
+            };
+        }
+        // After each miss, one proposal with margins: a safe step to a feasible
+        // point is worth more than another that only just fails.
+        // While nothing is feasible, every one after the first miss.
+        let cautious = if notebook.best().is_some() {
+            self.misses % 2 == 1
+        } else {
+            self.misses > 0
         };
-        match (proposal, self.region) {
-            (Proposal::Point(x), region) => match notebook.analyse(&x, Stage::Modular) {
-                Ok(index) => {
-                    if region == Region::Whole && notebook.best_index() == Some(index) {
-                        self.region = Region::AroundBest;
-                    }
-                    None
+        let mut margin = 0.0;
+        let mut proposal = None;
+        if cautious && !self.elastic() {
+            margin = self.caution;
+            proposal = self.propose(notebook, margin);
+        }
+        if proposal.is_none() {
+            if margin > 0.0 {
+                (self.caution, margin) = (0.5 * margin, 0.0);
+            }
+            if self.ask == Ask::Likely {
+                self.tries += 1;
+                if self.tries > notebook.settings.max_poll {
+                    return self.go_on(notebook);
                 }
-                // A failed point is shut out like any other.
-                Err(refusal) => stop_of(refusal),
-            },
-            (Proposal::Nothing, Region::AroundRelaxed) => {
-                self.region = if feasible {
-                    Region::AroundBest
-                } else {
-                    Region::Whole
-                };
+            }
+            proposal = self.propose(notebook, margin);
+        }
+        let Some(x) = proposal else {
+            return self.go_on(notebook);
+        };
+        match notebook.analyse(&x, Stage::Modular) {
+            Ok(index) if notebook.best_index() == Some(index) => {
+                if self.ask != Ask::AroundRelaxed {
+                    self.ask = Ask::AroundBest;
+                }
+                (self.trust, self.tries, self.misses) = (Trust::Own, 0, 0);
                 None
             }
-            (Proposal::Nothing, Region::AroundBest) => {
-                self.region = Region::Whole;
+            // Its linearisation, or its being shut out, forbids it from now on.
+            Ok(index) => {
+                self.misses += 1;
+                // The model had promised -margin.
+                self.caution = margin + notebook.points[index].evaluation.worst().max(0.0);
                 None
             }
-            (Proposal::Nothing, Region::Whole) => {
-                let stop = self.poll(notebook)?;
-                let doubtful = notebook.linearisations.iter().any(|l| l.kappa > 0.0);
-                self.trust = match (stop, self.trust) {
-                    (Stop::NoBetterFound, Trust::Own) if doubtful => Trust::Shared,
-                    (Stop::NoBetterFound, Trust::Shared) if doubtful => Trust::Doubled,
-                    _ => return Some(stop),
-                };
-                None
-            }
+            Err(refusal) => stop_of(refusal),
         }
     }
 
-    /// The integer program of the present region.
-    fn propose(&self, notebook: &Notebook, elastic: bool) -> Proposal {
-        let nothing = Proposal::Nothing;
+    /// The present question has no answer (any more): to the next, or the end.
+    fn go_on(&mut self, notebook: &Notebook) -> Option<Stop> {
+        let feasible = notebook.best().is_some();
+        let doubtful = notebook.linearisations.iter().any(|l| l.kappa > 0.0);
+        self.ask = match self.ask {
+            Ask::AroundRelaxed if feasible => Ask::AroundBest,
+            Ask::AroundRelaxed | Ask::AroundBest => Ask::Whole,
+            Ask::Whole if !feasible => Ask::LessViolation,
+            Ask::Whole | Ask::LessViolation => Ask::Poll,
+            Ask::Poll if feasible && doubtful => Ask::Likely,
+            Ask::Poll if doubtful && self.trust != Trust::Doubled => {
+                self.trust = match self.trust {
+                    Trust::Own => Trust::Shared,
+                    Trust::Shared | Trust::Doubled => Trust::Doubled,
+                };
+                Ask::Whole
+            }
+            Ask::Poll | Ask::Likely => {
+                return Some(if notebook.points.is_empty() {
+                    Stop::NothingAdmissible
+                } else {
+                    Stop::NoBetterFound
+                });
+            }
+        };
+        None
+    }
+
+    /// Constraints may be violated in the present question, at a cost.
+    fn elastic(&self) -> bool {
+        matches!(self.ask, Ask::LessViolation | Ask::Likely)
+    }
+
+    /// The integer program of the present question.
+    fn propose(&self, notebook: &Notebook, margin: f64) -> Option<Vec<f64>> {
+        let elastic = self.elastic();
         let variables = notebook.variables();
         let (lower, upper) = self.bounds(notebook);
         let mut program = LinearProgram::default();
-        let Some(frame) = Frame::lattice(&mut program, variables, &lower, &upper) else {
-            return nothing;
-        };
+        let frame = Frame::lattice(&mut program, variables, &lower, &upper)?;
         let mut possible = frame.add_rows(&mut program, notebook.rows());
         possible &= add_objective(
             &mut program,
@@ -168,36 +232,31 @@ impl LatticeSearch {
             elastic,
             self.delta(notebook),
         );
-        possible &= add_linearisations(&mut program, &frame, notebook, elastic, self);
+        possible &= add_linearisations(&mut program, &frame, notebook, self, margin);
         // A cut speaks of feasible points only, not of how much others violate.
-        possible &= elastic || add_cuts(&mut program, &frame, notebook);
+        possible &= self.ask == Ask::LessViolation || add_cuts(&mut program, &frame, notebook);
         if self.pure {
             possible &= shut_out(&mut program, &frame, notebook);
         }
         if !possible {
-            return nothing;
+            return None;
         }
         match program.solve(notebook.settings.node_limit) {
             Answer::Found { values, .. } => {
                 let x = frame.point(variables, &values);
-                let fresh = !notebook.knows(&x);
-                if fresh && notebook.admissible(&x) {
-                    Proposal::Point(x)
-                } else {
-                    nothing
-                }
+                (!notebook.knows(&x) && notebook.admissible(&x)).then_some(x)
             }
-            Answer::Infeasible | Answer::Failed => nothing,
+            Answer::Infeasible | Answer::Undecided | Answer::Failed => None,
         }
     }
 
-    /// Box of the present region.
+    /// Box of the present question.
     fn bounds(&self, notebook: &Notebook) -> (Vec<f64>, Vec<f64>) {
         let variables = notebook.variables();
-        let centre = match self.region {
-            Region::AroundRelaxed => Some(&self.relaxed),
-            Region::AroundBest => notebook.best().map(|best| &best.x),
-            Region::Whole => None,
+        let centre = match self.ask {
+            Ask::AroundRelaxed => Some(&self.relaxed),
+            Ask::AroundBest => notebook.best().map(|best| &best.x),
+            Ask::Whole | Ask::LessViolation | Ask::Poll | Ask::Likely => None,
         };
         let Some(centre) = centre else {
             return variables.iter().map(|v| (v.lower, v.upper)).unzip();
@@ -237,11 +296,7 @@ impl LatticeSearch {
     fn poll(&mut self, notebook: &mut Notebook) -> Option<Stop> {
         let feasible = notebook.best_index();
         let Some(base) = feasible.or(notebook.least_infeasible_index()) else {
-            return Some(if notebook.points.is_empty() {
-                Stop::NothingAdmissible
-            } else {
-                Stop::NoBetterFound
-            });
+            return Some(Stop::NoBetterFound);
         };
         let candidates = self.neighbours(notebook, base, feasible.is_some());
         for x in candidates.into_iter().take(notebook.settings.max_poll) {
@@ -252,10 +307,13 @@ impl LatticeSearch {
                         None => notebook.least_infeasible_index() == Some(index),
                     };
                     if better {
-                        self.region = Region::AroundBest;
-                        if notebook.best().is_none() {
-                            self.region = Region::Whole;
-                        }
+                        let now_feasible = notebook.best().is_some();
+                        self.ask = if now_feasible {
+                            Ask::AroundBest
+                        } else {
+                            Ask::LessViolation
+                        };
+                        (self.trust, self.tries, self.misses) = (Trust::Own, 0, 0);
                         return None;
                     }
                 }
@@ -276,7 +334,7 @@ impl LatticeSearch {
         let steps: Vec<(usize, f64)> = (0..variables.len())
             .flat_map(|j| [-1, 1].map(|step| (j, step)))
             .filter_map(|(j, step)| {
-                let lattice = variables[j].lattice?;
+                let lattice = binding_lattice(&variables[j])?;
                 let k = ((point.x[j] - lattice.anchor) / lattice.module).round() as i64 + step;
                 let (first, last) =
                     modules_within(&variables[j], variables[j].lower, variables[j].upper)?;
@@ -404,22 +462,24 @@ fn same_row(a: &(Vec<f64>, f64), b: &(Vec<f64>, f64)) -> bool {
     near(a.1, b.1) && a.0.iter().zip(&b.0).all(|(&x, &y)| near(x, y))
 }
 
-/// Rows of the constraints: those nearest to governing at the middle of the box,
-/// up to the number allowed. Elastic: one slack for each constraint.
+/// Rows of the constraints: those nearest to governing at the best point (or the
+/// continuous optimum), up to the number allowed. Elastic: one slack for each constraint.
 fn add_linearisations(
     program: &mut LinearProgram,
     frame: &Frame,
     notebook: &Notebook,
-    elastic: bool,
     search: &LatticeSearch,
+    margin: f64,
 ) -> bool {
     let variables = notebook.variables();
+    let elastic = search.elastic();
     let trust = search.trust;
     let aim = if search.pure {
         0.0
     } else {
         notebook.settings.aim
     };
+    let reference = notebook.best().map_or(&search.relaxed, |best| &best.x);
     let mut rows: Vec<(f64, usize, Vec<f64>, f64)> = notebook
         .linearisations
         .iter()
@@ -427,10 +487,8 @@ fn add_linearisations(
             let origin = &notebook.points[linearisation.point].x;
             let kappa = trust.kappa(notebook, linearisation);
             let (a, upper) = frame.softened(variables, linearisation, origin, kappa);
-            let middle: f64 = (0..a.len())
-                .map(|j| a[j] * 0.5 * (frame.lower[j] + frame.upper[j]))
-                .sum();
-            (upper - middle, linearisation.id, a, upper)
+            let there: f64 = a.iter().zip(reference).map(|(a, x)| a * x).sum();
+            (upper - there, linearisation.id, a, upper)
         })
         .collect();
     rows.sort_by(|a, b| a.0.total_cmp(&b.0));
@@ -438,7 +496,7 @@ fn add_linearisations(
     let mut slacks: Vec<(usize, usize)> = Vec::new();
     let mut possible = true;
     for (_, id, a, upper) in rows {
-        let (mut terms, upper) = frame.row(&a, upper - aim);
+        let (mut terms, upper) = frame.row(&a, upper - aim - margin);
         if elastic {
             let most: f64 = terms
                 .iter()
@@ -460,10 +518,16 @@ fn add_linearisations(
         }
         possible &= program.row(&terms, upper);
     }
-    if let (true, Some(least)) = (elastic, notebook.least_infeasible()) {
+    let most = match (search.ask, notebook.least_infeasible()) {
+        (Ask::LessViolation, Some(least)) => {
+            Some((1.0 - LESS_VIOLATION) * least.evaluation.violation())
+        }
+        (Ask::Likely, _) => Some(notebook.settings.doubt),
+        _ => None,
+    };
+    if let (true, Some(most)) = (elastic, most) {
         let all: Vec<(usize, f64)> = slacks.iter().map(|&(_, slack)| (slack, 1.0)).collect();
-        let less = (1.0 - LESS_VIOLATION) * least.evaluation.violation();
-        possible &= program.row(&all, less);
+        possible &= program.row(&all, most);
     }
     possible
 }
@@ -489,20 +553,19 @@ fn add_cuts(program: &mut LinearProgram, frame: &Frame, notebook: &Notebook) -> 
 /// Forbids analysed (or failed) lattice points that no row forbids yet: the sum
 /// of the distances |n_j - p_j| is at least one.
 fn shut_out(program: &mut LinearProgram, frame: &Frame, notebook: &Notebook) -> bool {
-    let mut count = 0;
+    let own = program.columns.len();
     // The frame's columns come first in the program.
     let known = frame.columns.iter().flatten().count();
     for p in notebook.visited() {
         let inside =
             (0..p.len()).all(|j| p[j] >= frame.lower[j] - 1e-9 && p[j] <= frame.upper[j] + 1e-9);
-        if !inside || count >= MAX_SHUT_OUT || !notebook.admissible(&p) {
+        if !inside || program.columns.len() - own >= MAX_BINARIES || !notebook.admissible(&p) {
             continue;
         }
         let values = frame.values(&p, program.columns.len());
         if program.forbids(&values, known) {
             continue;
         }
-        count += 1;
         let mut terms: Vec<(usize, f64)> = Vec::new();
         let mut least = 1.0;
         for &column in frame.columns.iter().flatten() {

@@ -34,13 +34,21 @@ pub struct Settings {
     /// Neighbours that the linear models forbid by no more than this are polled
     /// all the same, in units of the constraints, 0..1; default 0.02.
     pub poll_slack: f64,
-    /// Most analyses one poll may spend; default 40.
+    /// Better points anywhere that the linear models of nonconvex constraints
+    /// forbid by no more than this in sum are tried before the search ends,
+    /// least forbidden first, in units of the constraints, 0..1; default 0.1.
+    pub doubt: f64,
+    /// Most analyses that a poll, or the trial of doubtful points, may spend
+    /// without an improvement; default 40.
     pub max_poll: usize,
     /// Node limit of each integer program (a count, not a time, so that the
-    /// answer does not depend on the machine); default 2000.
+    /// answer does not depend on the machine); default 300.
     pub node_limit: usize,
+    /// Analyses that may be spent on raising the lower bound after the search,
+    /// where the problem has an affine minorant; default 6. Taken from the budget.
+    pub proving: usize,
     /// Most linearisations in one program, those nearest to governing first;
-    /// default 400.
+    /// default 150.
     pub max_linearisations: usize,
 }
 
@@ -58,9 +66,11 @@ impl Default for Settings {
             region_modules: 3,
             improvement: 1e-7,
             poll_slack: 0.02,
+            doubt: 0.1,
             max_poll: 40,
-            node_limit: 2000,
-            max_linearisations: 400,
+            node_limit: 300,
+            proving: 6,
+            max_linearisations: 150,
         }
     }
 }

@@ -3,7 +3,161 @@
 
 use std::collections::BTreeMap;
 
+use corewright::analysis::analyst::{Analyst, Response};
+use corewright::analysis::freedoms::Freedoms;
+use corewright::analysis::modes::Class;
+use corewright::analysis::statics::{displacements, floor_forces};
+use corewright::analysis::stiffness::{Stiffness, plan_nodes, reading};
+use corewright::blocktri::{BlockTridiagonal, Factor};
+use corewright::elements::FreedomKind;
+use corewright::model::sizes::Sizes;
 use corewright::model::tower::*;
+
+/// Elastic modulus of [`equal_storeys`], Pa.
+pub const E: f64 = 30e9;
+
+/// A factor of wall shear stiffness that makes walls shear rigid: what is left
+/// of a free panel then is an Euler-Bernoulli beam.
+pub const SHEAR_RIGID: f64 = 1e6;
+
+/// Analysis at the tower's own sizes.
+pub fn analyse(tower: &Tower) -> Response {
+    let sizes = Sizes::of(tower);
+    Analyst::new(tower)
+        .analyse(&sizes.values(tower))
+        .expect("the tower has an analysis")
+}
+
+/// Relative difference.
+pub fn off(value: f64, expected: f64) -> f64 {
+    (value / expected - 1.0).abs()
+}
+
+/// Circular frequencies of the modes of one class, rad/s, lowest first.
+pub fn omegas(response: &Response, class: Class) -> Vec<f64> {
+    response
+        .modes
+        .list
+        .iter()
+        .filter(|mode| mode.class == class)
+        .map(|mode| mode.eigenvalue.sqrt())
+        .collect()
+}
+
+/// Limit of values that depend on the number of storeys, from `storeys`, twice
+/// and four times as many: errors of the two stated orders in storey height are
+/// taken out (Richardson).
+pub fn in_the_limit(
+    storeys: usize,
+    orders: [i32; 2],
+    values: impl Fn(usize) -> Vec<f64>,
+) -> Vec<f64> {
+    let runs = [1, 2, 4].map(|times| values(storeys * times));
+    let better = |coarse: f64, fine: f64, order: i32| {
+        let ratio = 2.0_f64.powi(order);
+        (ratio * fine - coarse) / (ratio - 1.0)
+    };
+    let count = runs.iter().map(Vec::len).min().unwrap_or(0);
+    (0..count)
+        .map(|i| {
+            let first = better(runs[0][i], runs[1][i], orders[0]);
+            let second = better(runs[1][i], runs[2][i], orders[0]);
+            better(first, second, orders[1])
+        })
+        .collect()
+}
+
+/// Static displacements of all freedoms under one lateral case.
+pub struct Moved {
+    tower: Tower,
+    freedoms: Freedoms,
+    values: Vec<f64>,
+}
+
+/// Displacements under lateral case `case`, in the period state's properties,
+/// without a modal analysis.
+pub fn moved(tower: &Tower, case: usize) -> Moved {
+    let sizes = Sizes::of(tower);
+    let freedoms = Freedoms::of(tower);
+    let stiffness = Stiffness::new(tower, &sizes, &freedoms, tower.period_state);
+    let mut matrix = BlockTridiagonal::new(&freedoms.blocks);
+    stiffness.assemble(&mut matrix);
+    let factor = Factor::new(&matrix).expect("the tower stands");
+    let forces = floor_forces(tower, &tower.lateral_cases[case]);
+    let columns = displacements(&factor, &freedoms, &freedoms.floor_numbers(), &[&forces]);
+    Moved {
+        tower: tower.clone(),
+        values: columns.col(0).to_vec(),
+        freedoms,
+    }
+}
+
+impl Moved {
+    fn at(&self, level: usize, kind: FreedomKind) -> f64 {
+        let sizes = Sizes::of(&self.tower);
+        let values = sizes.values(&self.tower);
+        let nodes = plan_nodes(&self.tower);
+        let start = self.freedoms.levels[level].start;
+        self.freedoms
+            .locate::<f64>(level, kind, &reading(&sizes, &values, &nodes, None))
+            .into_iter()
+            .map(|(local, share)| share * self.values[start + local])
+            .sum()
+    }
+
+    pub fn x(&self, level: usize) -> f64 {
+        self.at(level, FreedomKind::FloorX)
+    }
+
+    pub fn y(&self, level: usize) -> f64 {
+        self.at(level, FreedomKind::FloorY)
+    }
+
+    pub fn twist(&self, level: usize) -> f64 {
+        self.at(level, FreedomKind::FloorTwist)
+    }
+
+    /// Upward displacement of a node, m.
+    pub fn up(&self, level: usize, node: usize) -> f64 {
+        self.at(level, FreedomKind::Vertical(node))
+    }
+}
+
+/// A tower of uniform mass and height: every floor carries the mass of half a
+/// storey above and below it, so the top one half as much as the others.
+/// `mass` per height (kg/m); `gyration_squared` of the floors (m2).
+pub fn uniform_tower(count: usize, height: f64, mass: f64, gyration_squared: f64) -> Tower {
+    let storey = height / count as f64;
+    let floor = mass * storey;
+    let mut tower = equal_storeys(count, storey, floor, floor * gyration_squared);
+    let top = &mut tower.storeys[count - 1].floor.mass;
+    top.mass *= 0.5;
+    top.rotational_inertia *= 0.5;
+    tower
+}
+
+/// Storey forces (N) of a load per height (N/m) on equal storeys, half of a
+/// storey's load at the top.
+pub fn uniform_load(tower: &Tower, load: f64) -> Vec<f64> {
+    let count = tower.storey_count();
+    let mut forces = vec![load * tower.storeys[0].height; count];
+    forces[count - 1] *= 0.5;
+    forces
+}
+
+/// A column that keeps its node from moving up or down by anything that counts.
+pub fn giant_column(tower: &mut Tower, at: usize) {
+    column(tower, at, 4e3, false);
+}
+
+/// Two stiff walls along Y, so that a tower of members along X holds Y and twist.
+pub fn hold_y_and_twist(tower: &mut Tower) {
+    let group = wall_group(tower, 0.3);
+    for x in [-30.0, 30.0] {
+        let (a, b) = (node(tower, x, -10.0), node(tower, x, 10.0));
+        wall(tower, group, a, b);
+    }
+}
 
 /// `count` equal storeys with no member yet: floors of mass `mass` (kg) and
 /// rotational inertia `inertia` (kg m2) about the origin, E = 30 GPa, G = E/2.4.
@@ -152,6 +306,32 @@ pub fn wall(tower: &mut Tower, group: usize, from: usize, to: usize) {
         storeys,
         option: None,
         tributary: None,
+    });
+}
+
+/// Adds a wall along plan angle `angle` (rad), of length `length` about a point.
+pub fn wall_about(tower: &mut Tower, group: usize, x: f64, y: f64, length: f64, angle: f64) {
+    let (dx, dy) = (0.5 * length * angle.cos(), 0.5 * length * angle.sin());
+    let (a, b) = (node(tower, x - dx, y - dy), node(tower, x + dx, y + dy));
+    wall(tower, group, a, b);
+}
+
+/// Adds a beam group and returns its index.
+pub fn beam_group(tower: &mut Tower, breadth: f64, depth: f64) -> usize {
+    let id = format!("bg{}", tower.beam_groups.len() + 1);
+    tower.beam_groups.push(BeamGroup { id, breadth, depth });
+    tower.beam_groups.len() - 1
+}
+
+/// Adds a beam at every storey's top.
+pub fn beam(tower: &mut Tower, group: usize, from: usize, to: usize) {
+    let storeys = all(tower);
+    tower.beams.push(Beam {
+        id: format!("b{}", tower.beams.len() + 1),
+        group,
+        from,
+        to,
+        storeys,
     });
 }
 
