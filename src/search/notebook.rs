@@ -16,6 +16,7 @@
 
 use std::collections::BTreeMap;
 
+use super::frame::binding_lattice;
 use super::outcome::{Outcome, Point, Stop, TraceEntry};
 use super::problem::{Cut, Evaluation, EvaluationFailure, LinearRow, Problem, Variable};
 use super::progress::{Observer, Progress, Stage};
@@ -389,7 +390,7 @@ pub(crate) fn on_lattice(variables: &[Variable], x: &[f64]) -> bool {
     variables.iter().zip(x).all(|(variable, &x)| {
         let rounding = ROW_ROUNDING * (1.0 + x.abs());
         let within = x >= variable.lower - rounding && x <= variable.upper + rounding;
-        let on = variable.lattice.is_none_or(|lattice| {
+        let on = binding_lattice(variable).is_none_or(|lattice| {
             let k = ((x - lattice.anchor) / lattice.module).round();
             (lattice.anchor + k * lattice.module - x).abs() <= rounding
         });

@@ -45,7 +45,7 @@ pub struct Settings {
     /// answer does not depend on the machine); default 300.
     pub node_limit: usize,
     /// Most linearisations in one program, those nearest to governing first;
-    /// default 400.
+    /// default 150.
     pub max_linearisations: usize,
 }
 
@@ -66,7 +66,7 @@ impl Default for Settings {
             doubt: 0.1,
             max_poll: 40,
             node_limit: 300,
-            max_linearisations: 400,
+            max_linearisations: 150,
         }
     }
 }
