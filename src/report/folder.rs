@@ -17,9 +17,9 @@ use super::cautions::CAUTIONS;
 use super::numbers::signed_amount;
 use super::proposal_text::verdict;
 use super::summary::{
-    ChangeSummary, ConflictSummary, CoverageSummary, GivenSummary, Origin, ProposalReport,
-    QuantitySummary, Results, SchemeSummary, SensitivitySummary, SettingSummary, Status,
-    TowerSummary, sha256,
+    BoundSummary, ChangeSummary, ConflictSummary, CoverageSummary, GivenSummary, Origin,
+    ProposalReport, QuantitySummary, Results, SchemeSummary, SensitivitySummary, SettingSummary,
+    Status, TowerSummary, sha256,
 };
 use super::words;
 use crate::analysis::analyst::AnalysisError;
@@ -226,6 +226,10 @@ fn report(
         ended,
         settings: SettingSummary::of(&circumstances.settings, circumstances.time_limit_s),
         coverage: CoverageSummary::of(&proposal.coverage),
+        bound: proposal
+            .bound
+            .as_ref()
+            .map(|bound| BoundSummary::of(bound, &schemes)),
         given,
         schemes,
         conflict: proposal.conflict.as_ref().map(ConflictSummary::of),
