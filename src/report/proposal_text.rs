@@ -120,6 +120,8 @@ fn bound(bound: Option<&BoundSummary>) -> String {
             .to_owned();
     };
     let covers = bound.covers.join(", ");
+    // A bound is rounded to the side on which it stays true.
+    let down = |value: f64| signed_amount(value.floor());
     match (
         bound.added_concrete_m3,
         bound.gap_percent.first().copied().flatten(),
