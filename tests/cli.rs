@@ -251,6 +251,7 @@ fn proposed_schemes_are_files_that_check_confirms() {
         files.push(scheme["file"].as_str().unwrap().to_owned());
     }
     assert_eq!(schemes[0]["feasible"], true);
+    assert_bounded(&report);
     files.extend(["schemes.csv".to_owned(), "schemes.json".to_owned()]);
     files.sort();
     assert_eq!(desk.names("made/here"), files);
@@ -266,6 +267,24 @@ fn proposed_schemes_are_files_that_check_confirms() {
     for (row, scheme) in rows.iter().zip(schemes) {
         let value: f64 = row[added].parse().unwrap();
         assert!((value - scheme["added_concrete_m3"].as_f64().unwrap()).abs() < 1e-6);
+    }
+}
+
+/// A lower bound lies below every scheme that passes, and gaps say by how much.
+fn assert_bounded(report: &Value) {
+    let bound = &report["bound"];
+    assert_eq!(bound["rules_all_out"], false);
+    let least = bound["added_concrete_m3"].as_f64().unwrap();
+    let walls = bound["given_wall_concrete_m3"].as_f64().unwrap();
+    assert_eq!(
+        bound["given_wall_concrete_m3"],
+        report["given"]["quantities"]["walls_m3"]
+    );
+    for scheme in report["schemes"].as_array().unwrap() {
+        let added = scheme["added_concrete_m3"].as_f64().unwrap();
+        assert!(added >= least - 1e-6, "{added} lies below {least}");
+        let gap = scheme["gap_share_of_walls"].as_f64().unwrap();
+        assert!((gap - (added - least) / walls).abs() < 1e-9);
     }
 }
 

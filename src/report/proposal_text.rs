@@ -3,8 +3,8 @@
 use super::check_text::{heading, notes, push, section};
 use super::numbers::{fixed, signed_amount, signed_significant, thousands, utilisation};
 use super::summary::{
-    ConflictSummary, CoverageSummary, KeySummary, ProposalReport, Results, SchemeSummary,
-    SensitivitySummary, Status,
+    BoundSummary, ConflictSummary, CoverageSummary, KeySummary, ProposalReport, Results,
+    SchemeSummary, SensitivitySummary, Status,
 };
 use super::tables::{Column, lines, table, wrapped};
 use super::words;
@@ -19,6 +19,12 @@ pub fn proposal_text(report: &ProposalReport, folder: &str) -> String {
     push(&mut text, "");
     push(&mut text, &wrapped(&report.verdict, 2));
     push(&mut text, &coverage(&report.coverage));
+    // A finite bound says something beside a scheme that passes.
+    if let Some(bound) = &report.bound
+        && (bound.rules_all_out || report.status == Status::Feasible)
+    {
+        push(&mut text, &wrapped(&bounds(bound, &report.schemes), 2));
+    }
     if report.settings.time_limit_s.is_some() {
         push(
             &mut text,
@@ -47,7 +53,12 @@ pub fn proposal_text(report: &ProposalReport, folder: &str) -> String {
 }
 
 /// The answer in a sentence; `ended` as in the report.
-pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String {
+pub fn verdict(
+    status: Status,
+    ended: &str,
+    schemes: &[SchemeSummary],
+    bound: Option<&BoundSummary>,
+) -> String {
     let passing = schemes.iter().filter(|scheme| scheme.feasible).count();
     let early = match ended {
         "finished" => String::new(),
@@ -87,6 +98,10 @@ pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String
                 signed_amount(least)
             )
         }
+        Status::Infeasible if bound.is_some_and(|bound| bound.rules_all_out) => format!(
+            "NOT POSSIBLE: a lower bound shows that no design of this space passes every check.{}",
+            nearest()
+        ),
         Status::Infeasible => format!(
             "NOT FOUND: nothing passes every check, {}.{}",
             words::NOT_PROVEN,
@@ -109,6 +124,33 @@ fn coverage(coverage: &CoverageSummary) -> String {
         count(coverage.analyses),
         count(coverage.failed_analyses)
     )
+}
+
+/// The lower bound, and how near the best scheme comes to it.
+fn bounds(bound: &BoundSummary, schemes: &[SchemeSummary]) -> String {
+    let covers = if bound.covers.is_empty() {
+        "the bounds on sizes alone".to_owned()
+    } else {
+        bound.covers.join(", ")
+    };
+    let Some(least) = bound.added_concrete_m3 else {
+        return format!("Proven: no design of the whole space meets these together: {covers}.");
+    };
+    let mut text = format!(
+        "Proven: no design of the whole space adds less than {} m3 (bound stands on: {covers}).",
+        signed_amount(least)
+    );
+    let best = schemes.iter().find_map(|scheme| {
+        let gap = scheme.gap_share_of_walls?;
+        Some((scheme.rank, gap))
+    });
+    if let Some((rank, gap)) = best {
+        text.push_str(&format!(
+            " Scheme {rank} is at most {} % of all wall concrete above the best possible.",
+            fixed(100.0 * gap, 2)
+        ));
+    }
+    text
 }
 
 fn conflicts(text: &mut String, conflict: &ConflictSummary) {
@@ -140,7 +182,7 @@ fn comparison(report: &ProposalReport) -> String {
         ("Ty s", number),
         ("Ttwist s", number),
         ("ratio", number),
-        ("governed by", Column::Title),
+        ("governed by", Column::Text),
         ("used", number),
         ("steps", number),
         ("floor m2", number),

@@ -12,7 +12,7 @@ use crate::checks::{Check, all_pass, governing};
 use crate::model::sizes::Size;
 use crate::model::tower::{StoreyRange, Tower};
 use crate::schemes::conflict::Conflict;
-use crate::schemes::run::{Coverage, Settings};
+use crate::schemes::run::{Bound, Coverage, Settings};
 use crate::schemes::scheme::{Change, Changed, Key, Quantities, Scheme, Sensitivity, quantities};
 
 /// Where a report comes from.
@@ -334,13 +334,16 @@ pub struct ProposalReport {
     pub status: Status,
     /// The answer in a sentence.
     pub verdict: String,
-    /// Why the search ended: "finished", "interrupted", "time limit" or "out of analyses".
+    /// Why the search ended: "finished", "interrupted", "time limit", "stopped"
+    /// (by a caller of the library) or "out of analyses".
     pub ended: &'static str,
     pub settings: SettingSummary,
     pub coverage: CoverageSummary,
     pub given: GivenSummary,
     /// Best first. When none passes: the nearest ones.
     pub schemes: Vec<SchemeSummary>,
+    /// None where nothing is proven.
+    pub bound: Option<BoundSummary>,
     pub conflict: Option<ConflictSummary>,
     pub warnings: Vec<String>,
     pub cautions: Vec<&'static str>,
@@ -389,6 +392,32 @@ impl CoverageSummary {
     }
 }
 
+/// What no design of the whole space can do better than.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct BoundSummary {
+    /// No design that passes the covered checks adds less to the tower as given;
+    /// none when no design can pass them at all.
+    pub added_concrete_m3: Option<f64>,
+    /// No design of the space can pass the covered checks.
+    pub rules_all_out: bool,
+    /// Checks that the bound stands on; it knows nothing of the others.
+    pub covers: Vec<String>,
+    /// What the gaps of schemes are shares of.
+    pub given_wall_concrete_m3: f64,
+}
+
+impl BoundSummary {
+    pub fn of(bound: &Bound) -> Self {
+        let finite = bound.added_concrete.is_finite();
+        BoundSummary {
+            added_concrete_m3: finite.then_some(bound.added_concrete),
+            rules_all_out: bound.added_concrete == f64::INFINITY,
+            covers: bound.covers.clone(),
+            given_wall_concrete_m3: bound.wall_concrete,
+        }
+    }
+}
+
 /// The tower as given.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct GivenSummary {
@@ -421,6 +450,9 @@ pub struct SchemeSummary {
     /// What the reading back found, when it went wrong.
     pub note: Option<String>,
     pub added_concrete_m3: f64,
+    /// At most so far above the best possible, as a share of all wall concrete of
+    /// the tower as given; only for schemes that pass, where a bound is known.
+    pub gap_share_of_walls: Option<f64>,
     /// Plan area of walls beyond the tower as given, summed over storeys.
     pub floor_area_lost_m2: f64,
     /// What tells this scheme from the others.
