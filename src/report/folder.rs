@@ -28,7 +28,7 @@ use crate::design::evaluate::examine;
 use crate::model::read::read_tower;
 use crate::model::write::full_form;
 use crate::schemes::rank::order;
-use crate::schemes::run::{Bound, Ended, Proposal, Settings};
+use crate::schemes::run::{Ended, Proposal, Settings};
 use crate::schemes::scheme::{Scheme, quantities};
 
 /// Why a file or folder could not be written.
@@ -222,7 +222,11 @@ fn report(
     };
     let finished = ended == "finished";
     let searched_in_vain = finished && !proposal.feasible() && !schemes.is_empty();
-    let ruled_out = proposal.bound.as_ref().is_some_and(rules_all_out);
+    let bound = proposal
+        .bound
+        .as_ref()
+        .map(|bound| BoundSummary::of(bound, &schemes));
+    let ruled_out = bound.as_ref().is_some_and(|bound| bound.impossible);
     let status = if schemes.iter().any(|scheme| scheme.feasible) {
         Status::Feasible
     } else if searched_in_vain || ruled_out {
@@ -230,7 +234,6 @@ fn report(
     } else {
         Status::Undecided
     };
-    let bound = proposal.bound.as_ref().map(BoundSummary::of);
     Ok(ProposalReport {
         tower: TowerSummary::of(&proposal.given.tower),
         status,
@@ -269,11 +272,6 @@ fn summary(
         feasible: scheme.feasible,
         note: staged.note.clone(),
         added_concrete_m3: scheme.added_concrete,
-        gap_share_of_walls: proposal
-            .bound
-            .as_ref()
-            .filter(|bound| scheme.feasible && bound.added_concrete.is_finite())
-            .map(|bound| bound.gap(scheme.added_concrete)),
         floor_area_lost_m2: scheme.quantities.wall_area - proposal.given.quantities.wall_area,
         ideas: scheme.ideas.iter().cloned().collect(),
         why: words::why(given, &results, &changes),
@@ -286,11 +284,6 @@ fn summary(
             .map(SensitivitySummary::of)
             .collect(),
     })
-}
-
-/// Whether no design of the space can pass.
-fn rules_all_out(bound: &Bound) -> bool {
-    bound.added_concrete == f64::INFINITY
 }
 
 fn file_name(rank: usize) -> String {

@@ -19,12 +19,7 @@ pub fn proposal_text(report: &ProposalReport, folder: &str) -> String {
     push(&mut text, "");
     push(&mut text, &wrapped(&report.verdict, 2));
     push(&mut text, &coverage(&report.coverage));
-    // A finite bound says something beside a scheme that passes.
-    if let Some(bound) = &report.bound
-        && (bound.rules_all_out || report.status == Status::Feasible)
-    {
-        push(&mut text, &wrapped(&bounds(bound, &report.schemes), 2));
-    }
+    push(&mut text, &wrapped(&bound(report.bound.as_ref()), 2));
     if report.settings.time_limit_s.is_some() {
         push(
             &mut text,
@@ -98,7 +93,7 @@ pub fn verdict(
                 signed_amount(least)
             )
         }
-        Status::Infeasible if bound.is_some_and(|bound| bound.rules_all_out) => format!(
+        Status::Infeasible if bound.is_some_and(|bound| bound.impossible) => format!(
             "NOT POSSIBLE: a lower bound shows that no design of this space passes every check.{}",
             nearest()
         ),
@@ -126,31 +121,37 @@ fn coverage(coverage: &CoverageSummary) -> String {
     )
 }
 
-/// The lower bound, and how near the best scheme comes to it.
-fn bounds(bound: &BoundSummary, schemes: &[SchemeSummary]) -> String {
-    let covers = if bound.covers.is_empty() {
-        "the bounds on sizes alone".to_owned()
-    } else {
-        bound.covers.join(", ")
+/// How far the best scheme may be from the best possible, as far as proven.
+fn bound(bound: Option<&BoundSummary>) -> String {
+    let Some(bound) = bound else {
+        return "Proven: nothing about what is the least possible (the core may move, or layouts \
+                were left out)."
+            .to_owned();
     };
-    let Some(least) = bound.added_concrete_m3 else {
-        return format!("Proven: no design of the whole space meets these together: {covers}.");
-    };
-    let mut text = format!(
-        "Proven: no design of the whole space adds less than {} m3 (bound stands on: {covers}).",
-        signed_amount(least)
-    );
-    let best = schemes.iter().find_map(|scheme| {
-        let gap = scheme.gap_share_of_walls?;
-        Some((scheme.rank, gap))
-    });
-    if let Some((rank, gap)) = best {
-        text.push_str(&format!(
-            " Scheme {rank} is at most {} % of all wall concrete above the best possible.",
-            fixed(100.0 * gap, 2)
-        ));
+    let covers = bound.covers.join(", ");
+    // A bound is rounded to the side on which it stays true.
+    let down = |value: f64| signed_amount(value.floor());
+    match (
+        bound.added_concrete_m3,
+        bound.gap_percent.first().copied().flatten(),
+    ) {
+        (None, _) => format!(
+            "Proven: no design within the stated bounds and layouts meets these checks together: \
+             {covers}."
+        ),
+        (Some(least), Some(gap)) => format!(
+            "Proven: no design of this space that passes adds less than {} m3, so the best scheme \
+             is at most {} % of all wall concrete above the best possible. This stands on: {covers}; \
+             the other checks can only raise it.",
+            down(least),
+            fixed((10.0 * gap.max(0.0)).ceil() / 10.0, 1)
+        ),
+        (Some(least), None) => format!(
+            "Proven: no design of this space that passes adds less than {} m3. This stands on: \
+             {covers}.",
+            down(least)
+        ),
     }
-    text
 }
 
 fn conflicts(text: &mut String, conflict: &ConflictSummary) {

@@ -339,11 +339,11 @@ pub struct ProposalReport {
     pub ended: &'static str,
     pub settings: SettingSummary,
     pub coverage: CoverageSummary,
+    /// Absent where nothing is proven.
+    pub bound: Option<BoundSummary>,
     pub given: GivenSummary,
     /// Best first. When none passes: the nearest ones.
     pub schemes: Vec<SchemeSummary>,
-    /// None where nothing is proven.
-    pub bound: Option<BoundSummary>,
     pub conflict: Option<ConflictSummary>,
     pub warnings: Vec<String>,
     pub cautions: Vec<&'static str>,
@@ -392,28 +392,35 @@ impl CoverageSummary {
     }
 }
 
-/// What no design of the whole space can do better than.
+/// How little concrete any design of the stated space can do with.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct BoundSummary {
-    /// No design that passes the covered checks adds less to the tower as given;
-    /// none when no design can pass them at all.
+    /// No design that passes the covered checks adds less; absent when none can
+    /// pass them at all.
     pub added_concrete_m3: Option<f64>,
-    /// No design of the space can pass the covered checks.
-    pub rules_all_out: bool,
-    /// Checks that the bound stands on; it knows nothing of the others.
+    /// The covered checks cannot be met by any design of the space: proven.
+    pub impossible: bool,
+    /// Checks on which the bound stands; it knows nothing of the others.
     pub covers: Vec<String>,
-    /// What the gaps of schemes are shares of.
-    pub given_wall_concrete_m3: f64,
+    /// Concrete of walls in the tower as given: what gaps are shares of.
+    pub wall_concrete_m3: f64,
+    /// How far each scheme, best first, may be above the best possible, in % of
+    /// the walls' concrete; absent for schemes that do not pass.
+    pub gap_percent: Vec<Option<f64>>,
 }
 
 impl BoundSummary {
-    pub fn of(bound: &Bound) -> Self {
+    pub fn of(bound: &Bound, schemes: &[SchemeSummary]) -> Self {
         let finite = bound.added_concrete.is_finite();
+        let gap = |scheme: &SchemeSummary| {
+            (finite && scheme.feasible).then(|| 100.0 * bound.gap(scheme.added_concrete_m3))
+        };
         BoundSummary {
             added_concrete_m3: finite.then_some(bound.added_concrete),
-            rules_all_out: bound.added_concrete == f64::INFINITY,
+            impossible: !finite,
             covers: bound.covers.clone(),
-            given_wall_concrete_m3: bound.wall_concrete,
+            wall_concrete_m3: bound.wall_concrete,
+            gap_percent: schemes.iter().map(gap).collect(),
         }
     }
 }
@@ -450,9 +457,6 @@ pub struct SchemeSummary {
     /// What the reading back found, when it went wrong.
     pub note: Option<String>,
     pub added_concrete_m3: f64,
-    /// At most so far above the best possible, as a share of all wall concrete of
-    /// the tower as given; only for schemes that pass, where a bound is known.
-    pub gap_share_of_walls: Option<f64>,
     /// Plan area of walls beyond the tower as given, summed over storeys.
     pub floor_area_lost_m2: f64,
     /// What tells this scheme from the others.
