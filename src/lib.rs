@@ -37,3 +37,7 @@ pub mod schemes;
 
 /// Results for people and programs.
 pub mod report;
+
+#[cfg(doctest)]
+#[doc = include_str!("../README.md")]
+struct ReadmeExamples;
