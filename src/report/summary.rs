@@ -334,7 +334,8 @@ pub struct ProposalReport {
     pub status: Status,
     /// The answer in a sentence.
     pub verdict: String,
-    /// Why the search ended: "finished", "interrupted", "time limit" or "out of analyses".
+    /// Why the search ended: "finished", "interrupted", "time limit", "stopped"
+    /// (by a caller of the library) or "out of analyses".
     pub ended: &'static str,
     pub settings: SettingSummary,
     pub coverage: CoverageSummary,
