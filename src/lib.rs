@@ -35,4 +35,9 @@ pub mod design;
 /// Alternatives: made, searched in parallel, told apart, ranked.
 pub mod schemes;
 
+/// Results for people and programs.
 pub mod report;
+
+#[cfg(doctest)]
+#[doc = include_str!("../README.md")]
+struct ReadmeExamples;

@@ -9,7 +9,9 @@ mod common;
 use std::f64::consts::PI;
 
 use common::*;
+use corewright::analysis::analyst::Analyst;
 use corewright::analysis::modes::Class;
+use corewright::model::sizes::Sizes;
 use corewright::model::tower::*;
 
 const HEIGHT: f64 = 180.0;
@@ -225,6 +227,62 @@ fn tip_mass_and_stepped_stiffness() {
     }
 }
 
+/// Closed-form optima of zone thicknesses: the uniform tower's period, or top
+/// drift, at the least concrete. The published shares must keep period and drift,
+/// add up to the published volume, and make the program's own gradient per
+/// volume the same in every zone (the optimality criterion; Berke and Venkayya
+/// 1974, from memory).
+#[test]
+fn optimal_zones_keep_the_period_and_equalise_its_gradient() {
+    // Least sum of four equal zones' EI with the uniform cantilever's frequency,
+    // mass not following: 0.646969 of the uniform volume (convex program, solved).
+    let zones = [1.3277, 0.8157, 0.3679, 0.0765];
+    assert!((zones.iter().sum::<f64>() / 4.0 - 0.646969).abs() < 5e-5);
+    let found = in_the_limit(12, [2, 4], |n| {
+        let tower = bending_tower(n, &zones);
+        let sizes = Sizes::of(&tower);
+        let mut analyst = Analyst::new(&tower);
+        let response = analyst.analyse(&sizes.values(&tower)).expect("an analysis");
+        let first = response.modes.first(Class::X).expect("a mode");
+        let modes = [&response.modes.list[first]];
+        let gradient = &analyst.eigenvalue_gradients(&response.masses, &modes)[0];
+        let mut values = vec![dimensionless(&tower)[0]];
+        values.extend((1..4).map(|zone| gradient[zone] / gradient[0]));
+        values
+    });
+    assert_close(&found[..1], &[3.516015], 5e-5, "frequency");
+    // Shares are given to four decimals, so the slimmest zone knows its own to 0.1 %.
+    assert_close(&found[1..], &[1.0, 1.0, 1.0], 3e-3, "gradients");
+}
+
+#[test]
+fn optimal_zones_keep_the_top_drift_and_equalise_its_gradient() {
+    // Uniform load: EI shares proportional to sqrt(a_i/L_i), a_i the zone's part of
+    // the virtual work of the uniform tower, z^2 z/2 from the top: closed form,
+    // 0.668511 of the uniform volume for four zones (Lagrange).
+    let work = |low: f64, high: f64| (high.powi(4) - low.powi(4)) / 8.0;
+    let parts: Vec<f64> = (0..4)
+        .map(|zone| work(0.75 - 0.25 * zone as f64, 1.0 - 0.25 * zone as f64))
+        .collect();
+    let roots: f64 = parts.iter().map(|part| part.sqrt()).sum();
+    let zones: Vec<f64> = parts.iter().map(|part| 8.0 * part.sqrt() * roots).collect();
+    assert!((zones.iter().sum::<f64>() / 4.0 - 0.668511).abs() < 1e-6);
+    let load = 20e3;
+    let found = in_the_limit(12, [2, 4], |n| {
+        let mut tower = bending_tower(n, &zones);
+        tower.lateral_cases = vec![case(Direction::X, Action::Wind, uniform_load(&tower, load))];
+        let sizes = Sizes::of(&tower);
+        let mut analyst = Analyst::new(&tower);
+        let response = analyst.analyse(&sizes.values(&tower)).expect("an analysis");
+        let gradient = &analyst.drift_gradients(0, &[analyst.top_probe(0, 0)])[0];
+        let mut values = vec![response.cases[0].top_drift[0]];
+        values.extend((1..4).map(|zone| gradient[zone] / gradient[0]));
+        values
+    });
+    let uniform = load * HEIGHT.powi(3) / (8.0 * E * INERTIA);
+    assert_close(&found, &[uniform, 1.0, 1.0, 1.0], 2e-5, "drift, gradients");
+}
+
 #[test]
 fn root_spring_of_a_bending_cantilever() {
     // kappa = k H/EI: 1 + cos x cosh x = (x/kappa)(sin x cosh x - cos x sinh x)
@@ -423,6 +481,27 @@ fn equal_sways_are_turned_to_the_axes() {
 }
 
 #[test]
+fn three_equal_periods_are_told_apart() {
+    // W = 1, no eccentricity: sways and twist have one period (the table above at
+    // e/r = 0), and any mixture of them is a mode; each must come out pure.
+    let r = 8.0;
+    let mut tower = pier_tower(5, 1.0, r * r, Point { x: 0.0, y: 0.0 });
+    let arm = r / 2.0_f64.sqrt();
+    for side in [-1.0, 1.0] {
+        pier(&mut tower, side * arm, 0.0, PI / 2.0, 0.5);
+        pier(&mut tower, 0.0, side * arm, 0.0, 0.5);
+    }
+    let modes = analyse(&tower).modes.list;
+    assert!(off(modes[2].eigenvalue, modes[0].eigenvalue) < 1e-7);
+    let classes = [0, 1, 2].map(|mode| modes[mode].class);
+    assert_eq!(classes, [Class::X, Class::Y, Class::Twist]);
+    for (mode, share) in modes.iter().zip(0..3) {
+        assert!(mode.shares[share] > 1.0 - 1e-6, "{:?}", mode.shares);
+        assert!(!mode.coupled);
+    }
+}
+
+#[test]
 fn a_turned_tower_has_the_same_periods_about_its_principal_directions() {
     let straight = analyse(&four_walls(15, 0.3, 0.5, 0.0)).modes;
     for degrees in [30.0_f64, -20.0] {
@@ -544,6 +623,115 @@ fn portal_frame_with_flexible_beam() {
         tower.lateral_cases = vec![case(Direction::X, Action::Wind, vec![100.0])];
         let found = 100.0 / moved(&tower, 0).x(1);
         assert!(off(found, stiffness) < 1e-5, "{depth}: {found} {stiffness}");
+    }
+}
+
+#[test]
+fn a_stiff_tower_rocks_on_its_base_as_a_rigid_body() {
+    // Statics: top displacement F H^2/k on a rotational spring k, whatever the
+    // parts of the tower are that turn with it.
+    let (height, force) = (8.0, 1e4);
+    for direction in [Direction::X, Direction::Y] {
+        let mut tower = equal_storeys(2, 4.0, 1e5, 1e7);
+        let walls = wall_group(&mut tower, 0.5);
+        wall_about(&mut tower, walls, 7.0, -2.0, 5.0, 0.7);
+        for (x, y) in [(-4.0, -3.0), (4.0, 3.0), (-4.0, 3.0)] {
+            let at = node(&mut tower, x, y);
+            column(&mut tower, at, 2.0, true);
+        }
+        let beams = beam_group(&mut tower, 1.0, 2.0);
+        beam(&mut tower, beams, 2, 4);
+        beam(&mut tower, beams, 4, 3);
+        tower.base = Base::RotationalSprings {
+            about_x: 1e6,
+            about_y: 2e6,
+            centre: Point { x: 1.0, y: -0.5 },
+        };
+        tower.lateral_cases = vec![case(direction, Action::Wind, vec![0.0, force])];
+        let moved = moved(&tower, 0);
+        let (found, spring) = match direction {
+            Direction::X => (moved.x(2), 2e6),
+            Direction::Y => (moved.y(2), 1e6),
+        };
+        let expected = force * height * height / spring;
+        assert!(off(found, expected) < 2e-3, "{found} {expected}");
+    }
+}
+
+#[test]
+fn short_columns_give_in_shear() {
+    // Timoshenko: 1/k = h^3/(12 E I) + h/(5/6 G A) between a fixed foot and a beam
+    // that does not give; 1.5 m by 0.9 m, both directions.
+    let (height, x, y) = (3.0_f64, 1.5_f64, 0.9_f64);
+    for (direction, width, breadth) in [(Direction::X, x, y), (Direction::Y, y, x)] {
+        let mut tower = equal_storeys(1, height, 1e5, 1e7);
+        let corners = [(-5.0, -5.0), (5.0, -5.0), (5.0, 5.0), (-5.0, 5.0)]
+            .map(|(x, y)| node(&mut tower, x, y));
+        let beams = beam_group(&mut tower, 1e3, 100.0);
+        for at in corners {
+            column(&mut tower, at, x, true);
+            giant_column(&mut tower, at);
+        }
+        for group in &mut tower.column_groups {
+            let zone = &mut group.zones[0];
+            if zone.width_x == x {
+                zone.width_y = y;
+            }
+        }
+        for i in 0..4 {
+            beam(&mut tower, beams, corners[i], corners[(i + 1) % 4]);
+        }
+        tower.lateral_cases = vec![case(direction, Action::Wind, vec![1e6])];
+        let moved = moved(&tower, 0);
+        let found = match direction {
+            Direction::X => moved.x(1),
+            Direction::Y => moved.y(1),
+        };
+        let inertia = breadth * width.powi(3) / 12.0;
+        let give = height.powi(3) / (12.0 * E * inertia)
+            + height / (5.0 / 6.0 * E / 2.4 * breadth * width);
+        assert!(off(found, 1e6 * give / 4.0) < 1e-6, "{found}");
+    }
+}
+
+#[test]
+fn column_with_a_beam_pinned_at_its_far_end() {
+    // Slope deflection: a beam of I and L pinned far away holds the column's top
+    // with 3 E Ib/L; k = 12 i/h^2 (i + s)/(4 i + s), i = E Ic/h, s = 3 E Ib/L.
+    let (height, span) = (3.6, 7.5);
+    for depth in [0.5_f64, 1.5] {
+        for angle in [0.0, 0.5 * PI] {
+            let mut tower = equal_storeys(1, height, 1e5, 1e7);
+            tower.cracking.unfactored.columns = 1e-6;
+            tower.cracking.unfactored.beams = 1e-6;
+            let (sin, cos) = f64::sin_cos(angle);
+            let base = node(&mut tower, 0.0, 0.0);
+            let far = node(&mut tower, span * cos, span * sin);
+            let away = node(&mut tower, 3.0, 3.0);
+            column(&mut tower, base, 1.0, true);
+            column(&mut tower, far, 1e3, false);
+            // Twist must be held; the column's own place is the origin.
+            column(&mut tower, away, 1.0, true);
+            tower.column_groups[2].zones[0].width_x = 1e-2;
+            tower.column_groups[2].zones[0].width_y = 1e-2;
+            let group = beam_group(&mut tower, 0.8, depth);
+            beam(&mut tower, group, base, far);
+            let i = E * 1e-6 / 12.0 / height;
+            let s = 3.0 * E * 1e-6 * 0.8 * depth.powi(3) / 12.0 / span;
+            let expected = 12.0 * i / height.powi(2) * (i + s) / (4.0 * i + s);
+            let along = if angle == 0.0 {
+                Direction::X
+            } else {
+                Direction::Y
+            };
+            tower.lateral_cases = vec![case(along, Action::Wind, vec![10.0])];
+            let moved = moved(&tower, 0);
+            let found = 10.0 / if angle == 0.0 { moved.x(1) } else { moved.y(1) };
+            assert!(
+                off(found, expected) < 1e-5,
+                "{depth} {angle}: {found} {expected}"
+            );
+        }
     }
 }
 

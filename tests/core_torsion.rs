@@ -148,14 +148,15 @@ fn periods_of_open_and_braced_channels() {
 #[test]
 fn practical_channel_of_25_storeys_stays_near_the_closed_form() {
     // The same towers as built, with shear deformation and lintels that give at
-    // their roots, equal floors: Vlasov's periods times 1/0.9614 for 25 lumped
-    // floors, sqrt((n + 2.06)/n) (Zalka 2000, from memory). Shear deformation and
-    // the lintels' give lengthen them by a few per cent, never shorten them.
+    // their roots, equal floors: Vlasov's periods times sqrt((n + 2.06)/n) for n
+    // lumped floors (Zalka 2000, from memory; a fit to bending, 0.2 % here). The
+    // rest lengthens them: by the shear of short webs in Y, by lintels that span
+    // 8 m + 0.555 x 0.6 m and shear.
     for (lintels, class, expected, band) in [
-        (false, Class::Twist, 16.6436, 0.02),
-        (false, Class::Y, 4.6662, 0.05),
-        (false, Class::X, 8.0321, 0.02),
-        (true, Class::Twist, 10.3245, 0.05),
+        (false, Class::Twist, 16.6436, 0.002),
+        (false, Class::Y, 4.6662, 0.025),
+        (false, Class::X, 8.0321, 0.005),
+        (true, Class::Twist, 10.3245, 0.04),
     ] {
         let mut tower = channel(25, false, true);
         tower.storeys[24].floor.mass = tower.storeys[0].floor.mass;

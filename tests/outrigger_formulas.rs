@@ -374,3 +374,41 @@ fn rotational_spring_at_a_level_of_the_core() {
         assert!(off(found[0], expected) < 5e-5, "{z} {kappa}: {found:?}");
     }
 }
+
+#[test]
+fn a_stiff_belt_brings_in_the_columns_beside() {
+    // Statics: columns tied to the arms' own by a belt that does not give act with
+    // them, as one column of the summed area; without it they are idle.
+    let count = 40;
+    let drift = |column: f64, beside: Option<f64>, belt: bool| {
+        let outriggers = Outriggers {
+            column: column * MODULUS,
+            arm: 20.0,
+            storeys: 2,
+        };
+        let mut tower = outriggers.tower(count, &[21]);
+        if let Some(area) = beside {
+            for (x, tied) in [(-0.5 * SPAN, LEFT), (0.5 * SPAN, RIGHT)] {
+                for y in [-6.0, 6.0] {
+                    let at = node(&mut tower, x, y);
+                    column_of(&mut tower, at, area);
+                    tower.belts.arms.push(Arm { from: at, to: tied });
+                }
+            }
+            if belt {
+                tower.belts.places = vec![arm_place(21, 22, 1e6)];
+                tower.belts.max_places = 1;
+            }
+        }
+        moved(&tower, 0).x(count)
+    };
+    let alone = drift(1.0, None, false);
+    let together = drift(2.5, None, false);
+    assert!(together < 0.98 * alone);
+    assert!(off(drift(1.0, Some(0.75), true), together) < 1e-6);
+    assert!(off(drift(1.0, Some(0.75), false), alone) < 1e-12);
+}
+
+fn column_of(tower: &mut Tower, at: usize, area: f64) {
+    column(tower, at, area.sqrt(), false);
+}

@@ -253,8 +253,17 @@ impl MassModel {
         VolumeMinorants(self.bodies.iter().map(of_body).collect())
     }
 
+    /// Minorant of one body's volume, and its density.
+    pub fn bound<'a>(&self, minorants: &'a VolumeMinorants, body: usize) -> (&'a Affine, f64) {
+        (&minorants.0[body], self.bodies[body].density)
+    }
+
     /// An affine function of the sizes that nowhere exceeds all concrete, m3.
-    pub fn concrete_minorant(&self, minorants: &VolumeMinorants, size_count: usize) -> (f64, Vec<f64>) {
+    pub fn concrete_minorant(
+        &self,
+        minorants: &VolumeMinorants,
+        size_count: usize,
+    ) -> (f64, Vec<f64>) {
         let (mut constant, mut slopes) = (0.0, vec![0.0; size_count]);
         for piece in &self.pieces {
             let volume = &minorants.0[piece.body];
@@ -276,8 +285,9 @@ impl MassModel {
     ) -> (f64, Vec<f64>) {
         let of = |level: usize| &u[3 * level..3 * level + 3];
         let fixed = self.fixed.iter().enumerate();
-        let mut constant: f64 =
-            fixed.map(|(level, floor)| floor.product(of(level), of(level))).sum();
+        let mut constant: f64 = fixed
+            .map(|(level, floor)| floor.product(of(level), of(level)))
+            .sum();
         let mut slopes = vec![0.0; masses.size_count];
         if !self.moves_floors {
             return (constant, slopes);

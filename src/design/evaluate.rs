@@ -2,6 +2,7 @@
 
 use std::sync::Mutex;
 
+use super::cuts::CutMaker;
 use super::variables::Variables;
 use crate::analysis::analyst::{AnalysisError, Analyst, Response};
 use crate::analysis::inertia::Masses;
@@ -17,6 +18,7 @@ use crate::search::problem::{
 pub struct LayoutProblem {
     variables: Variables,
     given_concrete: f64,
+    cuts: Option<CutMaker>,
     analyst: Mutex<Analyst>,
 }
 
@@ -27,6 +29,7 @@ impl LayoutProblem {
         let analyst = Analyst::new(tower);
         let variables = Variables::of(tower, analyst.sizes());
         LayoutProblem {
+            cuts: CutMaker::of(&analyst, &variables, given_concrete),
             variables,
             given_concrete,
             analyst: Mutex::new(analyst),
@@ -39,6 +42,12 @@ impl LayoutProblem {
             variable.lattice = None;
         }
         self
+    }
+
+    /// Checks that a lower bound on concrete covers, in words; empty when none
+    /// can be proven.
+    pub fn bound_covers(&self) -> &[String] {
+        self.cuts.as_ref().map_or(&[], CutMaker::covers)
     }
 
     pub fn map(&self) -> &Variables {
@@ -89,6 +98,10 @@ impl Problem for LayoutProblem {
         &self.variables.rows
     }
 
+    fn objective_minorant(&self) -> Option<(f64, Vec<f64>)> {
+        self.cuts.as_ref().map(CutMaker::objective)
+    }
+
     fn evaluate(&self, x: &[f64]) -> Result<Evaluation, EvaluationFailure> {
         let failure = |error: AnalysisError| EvaluationFailure(error.to_string());
         let mut analyst = self
@@ -113,7 +126,10 @@ impl Problem for LayoutProblem {
                 .variables
                 .by_variable(&response.masses.total_concrete_by_size()),
             constraints,
-            cuts: Vec::new(),
+            cuts: match &self.cuts {
+                Some(maker) => maker.cuts(&analyst, &self.variables, &response),
+                None => Vec::new(),
+            },
         })
     }
 }

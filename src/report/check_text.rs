@@ -157,10 +157,9 @@ fn ratios(results: &Results) -> String {
 /// Checks in the order given, with a letter for where each limit comes from.
 pub(super) fn checks(checks: &[&CheckSummary]) -> String {
     let mut table = table(&[
-        ("check", Column::Text),
+        ("check", Column::Title),
         ("demand", Column::Number),
-        ("limit", Column::Number),
-        ("unit", Column::Text),
+        ("limit", Column::Text),
         ("used", Column::Number),
         ("verdict", Column::Text),
         ("clause", Column::Text),
@@ -180,8 +179,7 @@ pub(super) fn checks(checks: &[&CheckSummary]) -> String {
         table.add_row([
             check.name.clone(),
             demand,
-            limit,
-            unit_beside(check.unit).to_owned(),
+            format!("{limit} {}", unit_beside(check.unit)),
             utilisation(check.utilisation),
             verdict(check).to_owned(),
             check.clause.clone(),

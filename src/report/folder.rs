@@ -17,9 +17,9 @@ use super::cautions::CAUTIONS;
 use super::numbers::signed_amount;
 use super::proposal_text::verdict;
 use super::summary::{
-    ChangeSummary, ConflictSummary, CoverageSummary, GivenSummary, Origin, ProposalReport,
-    QuantitySummary, Results, SchemeSummary, SensitivitySummary, SettingSummary, Status,
-    TowerSummary, sha256,
+    BoundSummary, ChangeSummary, ConflictSummary, CoverageSummary, GivenSummary, Origin,
+    ProposalReport, QuantitySummary, Results, SchemeSummary, SensitivitySummary, SettingSummary,
+    Status, TowerSummary, sha256,
 };
 use super::words;
 use crate::analysis::analyst::AnalysisError;
@@ -226,6 +226,10 @@ fn report(
         ended,
         settings: SettingSummary::of(&circumstances.settings, circumstances.time_limit_s),
         coverage: CoverageSummary::of(&proposal.coverage),
+        bound: proposal
+            .bound
+            .as_ref()
+            .map(|bound| BoundSummary::of(bound, &schemes)),
         given,
         schemes,
         conflict: proposal.conflict.as_ref().map(ConflictSummary::of),
@@ -269,7 +273,7 @@ fn file_name(rank: usize) -> String {
     format!("scheme-{rank:02}.toml")
 }
 
-/// One row a scheme; numbers in full.
+/// One row a scheme.
 fn csv(report: &ProposalReport) -> String {
     let mut writer = csv::Writer::from_writer(Vec::new());
     for scheme in &report.schemes {
@@ -279,23 +283,29 @@ fn csv(report: &ProposalReport) -> String {
                 rank: scheme.rank,
                 file: &scheme.file,
                 feasible: scheme.feasible,
-                added_concrete_m3: scheme.added_concrete_m3,
-                period_x_s: scheme.results.periods.x_s,
-                period_y_s: scheme.results.periods.y_s,
-                period_twist_s: scheme.results.periods.twist_s,
-                ratio_to_smaller: scheme.results.ratio_to_smaller,
-                ratio_to_longer: scheme.results.ratio_to_longer,
+                added_concrete_m3: readable(scheme.added_concrete_m3),
+                period_x_s: readable(scheme.results.periods.x_s),
+                period_y_s: readable(scheme.results.periods.y_s),
+                period_twist_s: readable(scheme.results.periods.twist_s),
+                ratio_to_smaller: readable(scheme.results.ratio_to_smaller),
+                ratio_to_longer: readable(scheme.results.ratio_to_longer),
                 governing_check: governing.map_or("", |check| &check.name),
-                governing_utilisation: governing.map(|check| check.utilisation),
+                governing_utilisation: governing.map(|check| readable(check.utilisation)),
                 changes: scheme.changes.len(),
-                floor_area_lost_m2: scheme.floor_area_lost_m2,
-                total_concrete_m3: scheme.quantities.total_m3,
+                floor_area_lost_m2: readable(scheme.floor_area_lost_m2),
+                total_concrete_m3: readable(scheme.quantities.total_m3),
                 ideas: scheme.ideas.join("; "),
             })
             .expect("rows are plain and memory takes them");
     }
     let bytes = writer.into_inner().expect("memory takes all rows");
     String::from_utf8(bytes).expect("rows are made of text")
+}
+
+/// Rid of the last digits of binary arithmetic, which a spreadsheet would show;
+/// `schemes.json` has them all.
+fn readable(value: f64) -> f64 {
+    (value * 1e9).round() / 1e9
 }
 
 #[derive(Serialize)]
