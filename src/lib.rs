@@ -11,6 +11,8 @@ pub mod analysis;
 
 pub mod checks;
 
+pub mod placement;
+
 pub mod design;
 
 pub mod schemes;
