@@ -16,3 +16,5 @@ pub mod placement;
 pub mod design;
 
 pub mod schemes;
+
+pub mod report;

@@ -1,0 +1,64 @@
+//! `propose`: a search, its schemes verified and written.
+
+use corewright::report::folder::{Circumstances, json, prepare, write_folder};
+use corewright::report::proposal_text::proposal_text;
+use corewright::report::summary::Status;
+use corewright::schemes::run::{Settings, propose};
+
+use super::args::ProposeArguments;
+use super::input::Input;
+use super::message::{Answer, Failure, answer, say};
+use super::progress::Reporter;
+use super::signals::Stop;
+use super::{on_threads, yes_or_no};
+
+pub fn run(typed: &ProposeArguments, quiet: bool) -> Result<Answer, Failure> {
+    let stop = Stop::listen(typed.time_limit, quiet)?;
+    let input = Input::read(&typed.file)?;
+    // A place that cannot be written to is better known before the search.
+    let new_folder = prepare(&typed.out)?;
+    let settings = Settings {
+        schemes: typed.schemes,
+        max_analyses: typed.max_analyses,
+        seed: typed.seed,
+        ..Settings::default()
+    };
+    let reporter = Reporter::new(&stop, quiet);
+    let proposal = on_threads(typed.threads, || {
+        propose(&input.file.tower, &settings, &reporter)
+    })?;
+    reporter.finish();
+    let proposal = proposal.map_err(|error| {
+        if new_folder {
+            // Only empty folders go; one that has got company since stays.
+            let _ = std::fs::remove_dir(&typed.out);
+        }
+        Failure::analysis(&input.name, error)
+    })?;
+
+    let circumstances = Circumstances {
+        origin: input.origin(),
+        settings,
+        time_limit_s: typed.time_limit,
+        interrupted: stop.interrupted(),
+        warnings: input.file.warnings.clone(),
+    };
+    let report = write_folder(&typed.out, &proposal, circumstances)
+        .map_err(|error| Failure::of_folder(&input.name, error))?;
+    let text = if typed.json {
+        json(&report)
+    } else {
+        proposal_text(&report, &typed.out.display().to_string())
+    };
+    answer(&text)?;
+    if stop.interrupted() {
+        if !quiet {
+            say(&format!(
+                "interrupted: {} holds what was found until then",
+                typed.out.display()
+            ));
+        }
+        return Ok(Answer::Interrupted);
+    }
+    Ok(yes_or_no(report.status == Status::Feasible))
+}

@@ -1,0 +1,14 @@
+//! What every report must say beside its numbers. The one place of this text.
+
+/// What the results are for, what they leave out, and what is still to verify.
+pub const CAUTIONS: [&str; 4] = [
+    "This is an aid for concept design. Local codes and a licensed engineer decide.",
+    "Left out: out-of-plane bending of walls, frame action between slabs and walls, the \
+     restraint that floors put on the Poisson effect in walls, construction sequence, creep and \
+     shrinkage, soil beyond the stated springs, P-delta, wind and earthquake actions beyond the \
+     storey forces given, and the design of members (reinforcement, connections, foundations).",
+    "Limits, factors and clauses marked \"from memory\" are to be verified against the standard \
+     before anyone relies on them.",
+    "A search looks at many designs but proves nothing: a cheaper scheme may exist, and \
+     \"nothing found\" is not \"impossible\".",
+];
