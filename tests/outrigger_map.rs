@@ -149,11 +149,7 @@ fn by_full_analysis(tower: &Tower) -> Vec<f64> {
     };
     values.push(arms(&tower.outriggers) + arms(&tower.belts));
     let filled = (1..=tower.storey_count()).filter(|&storey| {
-        let mut places = tower
-            .outriggers
-            .places
-            .iter()
-            .chain(&tower.belts.places);
+        let mut places = tower.outriggers.places.iter().chain(&tower.belts.places);
         places.any(|place| place.in_use && place.storeys.contains(storey))
     });
     values.push(filled.count() as f64);
@@ -168,7 +164,11 @@ fn against_full_analyses(map: &Map) -> (f64, f64) {
         let expected = by_full_analysis(&map.field.with(set));
         assert_eq!(found.len(), expected.len());
         for ((quantity, found), expected) in map.quantities.iter().zip(found).zip(expected) {
-            let deviation = if expected == 0.0 { found.abs() } else { off(*found, expected) };
+            let deviation = if expected == 0.0 {
+                found.abs()
+            } else {
+                off(*found, expected)
+            };
             let (limit, worst) = match quantity {
                 Quantity::PeriodX
                 | Quantity::PeriodY
@@ -177,7 +177,10 @@ fn against_full_analyses(map: &Map) -> (f64, f64) {
                 | Quantity::RatioToLonger => (1e-4, &mut worst.0),
                 _ => (1e-6, &mut worst.1),
             };
-            assert!(deviation < limit, "{set:?} {quantity:?}: {found} {expected}");
+            assert!(
+                deviation < limit,
+                "{set:?} {quantity:?}: {found} {expected}"
+            );
             *worst = worst.max(deviation);
         }
     };
@@ -217,4 +220,131 @@ fn every_set_and_quantity_agrees_with_its_full_analysis() {
         let worst = against_full_analyses(&map);
         println!("{arms:?}: periods {:.1e}, others {:.1e}", worst.0, worst.1);
     }
+}
+
+/// Shear walls along X on the lines `ys`, each with a column beyond either end, and
+/// two walls along Y: twist about the origin. Arms are weightless.
+fn symmetric(ys: &[f64]) -> Tower {
+    let mut tower = equal_storeys(20, 3.5, 5e5, 5e5 * 120.0);
+    let group = wall_group(&mut tower, 0.4);
+    for &y in ys {
+        let ends = [-4.0, 4.0].map(|x| node(&mut tower, x, y));
+        wall(&mut tower, group, ends[0], ends[1]);
+        for (x, from) in [(-14.0, ends[0]), (14.0, ends[1])] {
+            let to = node(&mut tower, x, y);
+            column(&mut tower, to, 1.2, false);
+            tower.outriggers.arms.push(Arm { from, to });
+        }
+    }
+    hold_y_and_twist(&mut tower);
+    tower.outriggers.places = vec![free_place(1, 1, 0.5)];
+    tower
+}
+
+#[test]
+fn only_arms_off_the_centre_of_twist_change_the_torsional_period() {
+    // In-plane forces along a line through the centre of twist have no lever arm
+    // about it: exactly unchanged. Off it they resist twist.
+    let largest_change = |ys: &[f64], quantity: Quantity| {
+        let map = chart(&symmetric(ys), &choice(Arms::Outriggers, true, 2)).expect("a map");
+        let position = map.position(quantity).expect("a quantity of every tower");
+        let base = map.base[position];
+        map.by_size
+            .iter()
+            .flat_map(|sets| (0..sets.len()).map(move |set| sets.value(set, position)))
+            .map(|value| (value / base - 1.0).abs())
+            .fold(0.0, f64::max)
+    };
+    assert!(largest_change(&[0.0], Quantity::PeriodX) > 0.05);
+    assert!(largest_change(&[0.0], Quantity::PeriodTwist) < 1e-11);
+    assert!(largest_change(&[-9.0, 9.0], Quantity::PeriodTwist) > 0.005);
+}
+
+#[test]
+fn all_storeys_are_looked_at_where_arms_find_supports() {
+    // Runs of one and of two storeys among 12, as the stated places have them.
+    let mut tower = lopsided(12);
+    tower.outriggers.places = vec![free_place(5, 5, 0.5), free_place(8, 9, 0.5)];
+    let field = Field::of(&tower, &choice(Arms::Outriggers, true, 2)).expect("places");
+    assert_eq!(field.candidates.len(), 12 + 11);
+    // Pairs: 66 of two single ones, 11 * 12 - 22 mixed, 55 - 10 of two double ones.
+    assert_eq!(field.sets(2).expect("few").len() / 2, 66 + 110 + 45);
+
+    // A column that ends at storey 7 carries no arm above it.
+    tower.columns[0].storeys.last = 7;
+    tower.column_groups[0].zones[0].storeys.last = 7;
+    let field = Field::of(&tower, &choice(Arms::Outriggers, true, 2)).expect("places");
+    assert_eq!(field.candidates.len(), 7 + 6);
+    assert!(!field.left_out.is_empty());
+    assert!(chart(&tower, &choice(Arms::Outriggers, true, 2)).is_ok());
+
+    // Locked places stay: in use they block their storeys, out of use they are no choice.
+    tower.outriggers.places[0].locked = true;
+    tower.outriggers.places[0].in_use = true;
+    let field = Field::of(&tower, &choice(Arms::Outriggers, true, 2)).expect("places");
+    assert_eq!(field.candidates.len(), 6 + 4);
+    assert!(field.with(&[]).outriggers.places[0].in_use);
+    tower.outriggers.places[1].locked = true;
+    let none = Field::of(&tower, &choice(Arms::Outriggers, false, 2));
+    assert!(matches!(none, Err(PlacementError::NoPlaces(_))));
+    tower.outriggers.arms.clear();
+    let none = Field::of(&tower, &choice(Arms::Outriggers, false, 2));
+    assert!(matches!(none, Err(PlacementError::NoArms("outriggers"))));
+}
+
+#[test]
+fn given_arms_are_weighed_once_where_changes_alone_are_weighed() {
+    // Stated floor masses hold the arms of the tower as given already: taking them
+    // out makes floors lighter, putting them back gives the stated masses.
+    let mut tower = lopsided(10);
+    tower.structure_mass = StructureMass::Changes;
+    tower.outriggers.places = vec![arm_place(4, 5, 0.6), free_place(8, 8, 0.6)];
+    for all_storeys in [false, true] {
+        let levels = if all_storeys { 1 } else { 2 };
+        let map = chart(&tower, &choice(Arms::Outriggers, all_storeys, levels)).expect("a map");
+        against_full_analyses(&map);
+    }
+}
+
+#[test]
+fn the_map_is_the_same_on_any_number_of_threads() {
+    let mut tower = lopsided(16);
+    tower.outriggers.places = vec![free_place(1, 1, 0.5)];
+    let on = |threads: usize| {
+        rayon::ThreadPoolBuilder::new()
+            .num_threads(threads)
+            .build()
+            .expect("threads")
+            .install(|| chart(&tower, &choice(Arms::Outriggers, true, 3)))
+            .expect("a map")
+    };
+    let (one, three) = (on(1), on(3));
+    assert_eq!(one.by_size, three.by_size);
+    assert_eq!(one.base, three.base);
+}
+
+#[test]
+fn bests_and_leeway_are_what_a_plain_search_finds() {
+    let mut tower = lopsided(12);
+    tower.outriggers.places = vec![free_place(2, 2, 0.5)];
+    let map = chart(&tower, &choice(Arms::Outriggers, true, 2)).expect("a map");
+    for position in map.responses() {
+        for best in map.bests(position) {
+            let sets = &map.by_size[best.size - 1];
+            let values: Vec<f64> = (0..sets.len())
+                .map(|set| sets.value(set, position))
+                .collect();
+            assert!(values.iter().all(|value| *value >= best.value));
+            let near = values.iter().filter(|value| **value <= 1.02 * best.value);
+            assert_eq!(near.count(), best.near.len());
+            assert_eq!(best.near[0], best.set);
+            for set in &best.near {
+                for (member, (low, high)) in sets.set(*set).iter().zip(&best.region) {
+                    assert!((low..=high).contains(&member));
+                }
+            }
+        }
+    }
+    let verified = map.verify().expect("full analyses");
+    assert!(verified.sets > 0 && verified.periods < 1e-4 && verified.drifts < 1e-6);
 }

@@ -155,10 +155,12 @@ pub struct Workspace {
     floors: Vec<Inertia>,
 }
 
-/// Fewest and most base modes among the trial shapes.
-const MODES: (usize, usize) = (15, 30);
-/// Base modes of each class among the trial shapes, as far as [`MODES`] lets it.
+/// Lowest base modes among the trial shapes.
+const FEWEST_MODES: usize = 15;
+/// Base modes of each class among the trial shapes, as far as there are any.
 const OF_EACH_CLASS: usize = 5;
+/// Base modes looked at.
+const MOST_MODES: usize = 60;
 /// Shapes looked at first for one mode of each class.
 const FIRST_LOOK: usize = 6;
 
@@ -479,33 +481,30 @@ impl BaseModes {
     ) -> Result<Self, AnalysisError> {
         let floor_numbers = freedoms.floor_numbers();
         let flexibility = factor.flexibility(&floor_numbers);
-        let most = (2 * MODES.1).min(floor_numbers.len());
+        let most = MOST_MODES.min(floor_numbers.len());
         let pairs = modes_from_flexibility(&flexibility, &masses.matrices(), most)?;
-        let found = pairs.eigenvalues.len();
+        // The lowest modes, and more of the classes that have few among them.
         let mut of_class = [0; 3];
-        let mut m = 0;
-        while m < found.min(MODES.1)
-            && (m < MODES.0 || of_class.iter().any(|&count| count < OF_EACH_CLASS))
-        {
-            let (_, class) = class_of_shape(pairs.shapes.col(m), &masses.floors);
-            of_class[class as usize] += 1;
-            m += 1;
+        let mut chosen = Vec::new();
+        for mode in 0..pairs.eigenvalues.len() {
+            let (_, class) = class_of_shape(pairs.shapes.col(mode), &masses.floors);
+            if mode < FEWEST_MODES || of_class[class as usize] < OF_EACH_CLASS {
+                of_class[class as usize] += 1;
+                chosen.push(mode);
+            }
         }
-        // Neither is a cluster cut in two.
-        while m < found && pairs.eigenvalues[m] < pairs.eigenvalues[m - 1] * (1.0 + 1e-3) {
-            m += 1;
-        }
+        let m = chosen.len();
         for (class, count) in [Class::X, Class::Y, Class::Twist].iter().zip(of_class) {
             if count == 0 {
                 return Err(AnalysisError::MissingMode {
-                    found: m,
+                    found: pairs.eigenvalues.len(),
                     missing: class.name(),
                 });
             }
         }
 
-        let eigenvalues = pairs.eigenvalues[..m].to_vec();
-        let columns: Vec<Vec<f64>> = (0..m).map(|mode| pairs.shapes.col(mode).to_vec()).collect();
+        let eigenvalues: Vec<f64> = chosen.iter().map(|&mode| pairs.eigenvalues[mode]).collect();
+        let columns: Vec<&[f64]> = chosen.iter().map(|&mode| pairs.shapes.col(mode)).collect();
         let full = full_shapes_of(
             &eigenvalues,
             &columns,
