@@ -12,7 +12,7 @@ use common::*;
 use corewright::analysis::analyst::Analyst;
 use corewright::model::sizes::Sizes;
 use corewright::model::tower::*;
-use corewright::placement::field::{Arms, Choice};
+use corewright::placement::field::{Arms, Choice, Thickness};
 use corewright::placement::map::{Map, chart};
 
 /// Full analyses that sampled sets are held against.
@@ -84,6 +84,7 @@ fn timed(tower: &Tower, levels: usize, threads: usize) -> (Map, f64) {
         arms: Arms::Outriggers,
         all_storeys: true,
         levels,
+        thickness: Thickness::AsGiven,
     };
     let start = Instant::now();
     let map = pool.install(|| chart(tower, &choice)).expect("a map");
@@ -132,7 +133,9 @@ fn main() {
     );
     let start = Instant::now();
     for sample in 0..SAMPLES {
-        let tower = map.field.with(&sets.set((sample * 7919 + 13) % sets.len()));
+        let tower = map
+            .field
+            .with(&sets.set((sample * 7919 + 13) % sets.len()), 1.0);
         let sizes = Sizes::of(&tower);
         let response = Analyst::new(&tower).analyse(&sizes.values(&tower));
         assert!(response.is_ok());

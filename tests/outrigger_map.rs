@@ -7,7 +7,7 @@ use corewright::analysis::analyst::Analyst;
 use corewright::checks::periods::Fundamental;
 use corewright::model::sizes::Sizes;
 use corewright::model::tower::*;
-use corewright::placement::field::{Arms, Choice, Field, PlacementError};
+use corewright::placement::field::{Arms, Choice, Field, PlacementError, Thickness};
 use corewright::placement::map::{Map, Quantity, Sets, chart};
 
 /// An invented tower of `count` storeys without symmetry: an open core off
@@ -77,6 +77,7 @@ fn choice(arms: Arms, all_storeys: bool, levels: usize) -> Choice {
         arms,
         all_storeys,
         levels,
+        thickness: Thickness::AsGiven,
     }
 }
 
@@ -160,8 +161,8 @@ fn by_full_analysis(tower: &Tower) -> Vec<f64> {
 /// deviation of a period, and of anything else.
 fn against_full_analyses(map: &Map) -> (f64, f64) {
     let mut worst = (0.0_f64, 0.0_f64);
-    let mut hold = |set: &[usize], found: &[f64]| {
-        let expected = by_full_analysis(&map.field.with(set));
+    let mut hold = |set: &[usize], scale: f64, found: &[f64]| {
+        let expected = by_full_analysis(&map.field.with(set, scale));
         assert_eq!(found.len(), expected.len());
         for ((quantity, found), expected) in map.quantities.iter().zip(found).zip(expected) {
             let deviation = if expected == 0.0 {
@@ -184,10 +185,14 @@ fn against_full_analyses(map: &Map) -> (f64, f64) {
             *worst = worst.max(deviation);
         }
     };
-    hold(&[], &map.base);
+    hold(&[], 1.0, &map.base);
     for sets in &map.by_size {
         for index in 0..sets.len() {
-            hold(&sets.set(index), sets.values_of(index));
+            hold(
+                &sets.set(index),
+                sets.scales[index].0,
+                sets.values_of(index),
+            );
         }
     }
     worst
@@ -283,7 +288,7 @@ fn all_storeys_are_looked_at_where_arms_find_supports() {
     tower.outriggers.places[0].in_use = true;
     let field = Field::of(&tower, &choice(Arms::Outriggers, true, 2)).expect("places");
     assert_eq!(field.candidates.len(), 6 + 4);
-    assert!(field.with(&[]).outriggers.places[0].in_use);
+    assert!(field.with(&[], 1.0).outriggers.places[0].in_use);
     tower.outriggers.places[1].locked = true;
     let none = Field::of(&tower, &choice(Arms::Outriggers, false, 2));
     assert!(matches!(none, Err(PlacementError::NoPlaces(_))));
@@ -347,4 +352,49 @@ fn bests_and_leeway_are_what_a_plain_search_finds() {
     }
     let verified = map.verify().expect("full analyses");
     assert!(verified.sets > 0 && verified.periods < 1e-4 && verified.drifts < 1e-6);
+}
+
+#[test]
+fn the_least_thickness_is_the_first_that_passes_in_full_analyses() {
+    let mut tower = lopsided(12);
+    tower.outriggers.places = (3..=11).step_by(2).map(|k| free_place(k, k, 0.5)).collect();
+    for place in &mut tower.outriggers.places {
+        place.vary = Some(Vary {
+            min: 0.2,
+            max: 1.0,
+            module: 0.1,
+        });
+    }
+    // A limit that the tower misses without arms and some sets meet with them.
+    let as_given = chart(&tower, &choice(Arms::Outriggers, false, 2)).expect("a map");
+    let position = as_given.position(Quantity::TopDrift(0)).expect("a case");
+    let bests = as_given.bests(position);
+    tower.limits.wind_top_drift.value = 0.5 * (bests[0].value + bests[1].value);
+    tower.limits.wind_storey_drift.off = true;
+    tower.limits.earthquake_storey_drift.off = true;
+    tower.limits.torsion_ratio.off = true;
+    let least = Choice {
+        thickness: Thickness::Least,
+        ..choice(Arms::Outriggers, false, 2)
+    };
+    let map = chart(&tower, &least).expect("a map");
+    against_full_analyses(&map);
+    let limit = tower.limits.wind_top_drift.value;
+    let drift = |set: &[usize], tenths: usize| {
+        let scale = tenths as f64 * 0.1 / 0.5;
+        by_full_analysis(&map.field.with(set, scale))[position]
+    };
+    let mut found = std::collections::BTreeSet::new();
+    for sets in &map.by_size {
+        for index in 0..sets.len() {
+            let set = sets.set(index);
+            let expected = (2..=10).find(|&tenths| drift(&set, tenths) <= limit);
+            let (scale, meets) = sets.scales[index];
+            assert_eq!(meets, expected.is_some(), "{set:?}");
+            let thickness = expected.map_or(0.5, |tenths| tenths as f64 * 0.1);
+            assert!((scale * 0.5 - thickness).abs() < 1e-9, "{set:?}: {scale}");
+            found.insert(expected);
+        }
+    }
+    assert!(found.len() > 2, "the limit tells sets apart: {found:?}");
 }

@@ -72,6 +72,17 @@ impl Arms {
     }
 }
 
+/// How thick arms are.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Thickness {
+    /// As the tower states.
+    AsGiven,
+    /// For each set the least at which periods, ratio and drifts meet their
+    /// limits, all arms by one factor, in the steps of the first place that may
+    /// vary. Sets that meet them at no thickness stay as given.
+    Least,
+}
+
 /// What to choose from.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Choice {
@@ -80,6 +91,7 @@ pub struct Choice {
     pub all_storeys: bool,
     /// Most places in a set, 1 to [`MOST_LEVELS`].
     pub levels: usize,
+    pub thickness: Thickness,
 }
 
 /// One place to choose: indices among the places of [`Field::tower`].
@@ -242,19 +254,49 @@ impl Field {
         })
     }
 
-    /// The tower with a set of candidates in use.
-    pub fn with(&self, set: &[usize]) -> Tower {
+    /// The tower with a set of candidates in use, their arms `scale` times as
+    /// thick as stated.
+    pub fn with(&self, set: &[usize], scale: f64) -> Tower {
         let mut tower = self.tower.clone();
         for &member in set {
             let candidate = &self.candidates[member];
-            if let Some(place) = candidate.outrigger {
-                tower.outriggers.places[place].in_use = true;
-            }
-            if let Some(place) = candidate.belt {
-                tower.belts.places[place].in_use = true;
+            let outrigger = candidate
+                .outrigger
+                .map(|at| &mut tower.outriggers.places[at]);
+            let belt = candidate.belt.map(|at| &mut tower.belts.places[at]);
+            for place in outrigger.into_iter().chain(belt) {
+                place.in_use = true;
+                place.thickness *= scale;
             }
         }
         tower
+    }
+
+    /// Factors on thickness to try, least first.
+    pub fn scales(&self) -> Vec<f64> {
+        let place = |candidate: &Candidate| match candidate.outrigger {
+            Some(at) => Some(&self.tower.outriggers.places[at]),
+            None => candidate.belt.map(|at| &self.tower.belts.places[at]),
+        };
+        let varying = self
+            .candidates
+            .iter()
+            .filter_map(place)
+            .find_map(|place| place.vary.map(|vary| (place, vary)));
+        let Some((place, vary)) = varying.filter(|_| self.choice.thickness == Thickness::Least)
+        else {
+            return vec![1.0];
+        };
+        // Rounding must not lose a bound.
+        let step = |bound: f64| (bound - place.given_thickness) / vary.module;
+        let (low, high) = (
+            (step(vary.min) - 1e-9).ceil() as i64,
+            (step(vary.max) + 1e-9).floor() as i64,
+        );
+        (low..=high)
+            .map(|k| (place.given_thickness + k as f64 * vary.module) / place.thickness)
+            .filter(|scale| *scale > 0.0)
+            .collect()
     }
 
     /// Sets of exactly `count` candidates that go together, lowest first, in a

@@ -7,8 +7,9 @@ use crate::analysis::analyst::AnalysisError;
 use crate::analysis::analyst::Analyst;
 use crate::analysis::gravity::Support;
 use crate::analysis::low_rank::{LowRank, SetResponse, Workspace};
+use crate::checks::drift::{storey_limit, top_limit};
 use crate::model::sizes::Sizes;
-use crate::model::tower::{Arm, Tower};
+use crate::model::tower::{Arm, Limit, Tower};
 
 /// What sets are compared by. Less is better of each.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -72,6 +73,9 @@ pub struct Sets {
     pub members: Vec<u16>,
     /// One number a quantity, one set after the other; NaN where there is none.
     pub values: Vec<f64>,
+    /// Factor on the stated thickness of the arms, and whether periods, ratio and
+    /// drifts meet their limits with it, by set.
+    pub scales: Vec<(f64, bool)>,
     quantities: usize,
 }
 
@@ -148,32 +152,43 @@ pub fn chart(tower: &Tower, choice: &Choice) -> Result<Map, PlacementError> {
     let quantities = Quantity::all(cases);
     let width = quantities.len();
 
+    let scales = field.scales();
     let work_out = |set: &[usize], scratch: &mut Scratch, values: &mut [f64]| {
         let Scratch {
             workspace,
             response,
         } = scratch;
-        low_rank.respond(set, 1.0, workspace, response)?;
-        write(&field, &concrete, set, response, values);
-        Ok::<(), AnalysisError>(())
+        let mut at = |scale: f64| {
+            low_rank.respond(set, scale, workspace, response)?;
+            write(&field, &concrete, set, scale, response, values);
+            Ok::<bool, AnalysisError>(meets(&field.tower, values))
+        };
+        for &scale in &scales {
+            if at(scale)? {
+                return Ok((scale, true));
+            }
+        }
+        let passes = at(1.0)?;
+        Ok::<(f64, bool), AnalysisError>((1.0, passes))
     };
     let mut base = vec![0.0; width];
     work_out(&[], &mut Scratch::default(), &mut base)?;
     let mut by_size = Vec::new();
     for (size, members) in listed {
-        let mut values = vec![0.0; members.len() / size * width];
+        let count = members.len() / size;
+        let mut values = vec![0.0; count * width];
+        let mut found = vec![(1.0, false); count];
         values
             .par_chunks_mut(PER_TASK * width)
+            .zip(found.par_chunks_mut(PER_TASK))
             .zip(members.par_chunks(PER_TASK * size))
-            .try_for_each_init(Scratch::default, |scratch, (values, members)| {
+            .try_for_each_init(Scratch::default, |scratch, ((values, found), members)| {
                 let mut set = Vec::with_capacity(size);
-                for (values, members) in values
-                    .chunks_exact_mut(width)
-                    .zip(members.chunks_exact(size))
-                {
+                let each = values.chunks_exact_mut(width).zip(found);
+                for ((values, found), members) in each.zip(members.chunks_exact(size)) {
                     set.clear();
                     set.extend(members.iter().map(|&member| member as usize));
-                    work_out(&set, scratch, values)?;
+                    *found = work_out(&set, scratch, values)?;
                 }
                 Ok::<(), AnalysisError>(())
             })?;
@@ -181,6 +196,7 @@ pub fn chart(tower: &Tower, choice: &Choice) -> Result<Map, PlacementError> {
             size,
             members,
             values,
+            scales: found,
             quantities: width,
         });
     }
@@ -206,6 +222,7 @@ fn write(
     field: &Field,
     concrete: &[f64],
     set: &[usize],
+    scale: f64,
     response: &SetResponse,
     values: &mut [f64],
 ) {
@@ -224,8 +241,25 @@ fn write(
         values.copy_from_slice(&[case.top_drift, case.storey_drift, case.core_moment]);
     }
     let last = rest.len() - 2;
-    rest[last] = set.iter().map(|&member| concrete[member]).sum();
+    rest[last] = scale * set.iter().map(|&member| concrete[member]).sum::<f64>();
     rest[last + 1] = storeys_filled(field, set) as f64;
+}
+
+/// Whether periods, ratio and drifts, as [`write`] puts them down, meet the limits
+/// that are not switched off. Gravity stresses are no part of it.
+fn meets(tower: &Tower, values: &[f64]) -> bool {
+    let limits = &tower.limits;
+    // What is not a number meets nothing.
+    let within = |value: f64, limit: &Limit| limit.off || value <= limit.value;
+    let cases = values[5..].chunks_exact(3).zip(&tower.lateral_cases);
+    within(values[0], &limits.translation_period)
+        && within(values[1], &limits.translation_period)
+        && within(values[3], &limits.torsion_ratio)
+        && cases.into_iter().all(|(values, case)| {
+            let top = top_limit(tower, case.action);
+            top.is_none_or(|limit| within(values[0], limit))
+                && within(values[1], storey_limit(tower, case.action))
+        })
 }
 
 /// Storeys that any of the set's places fill.

@@ -129,7 +129,7 @@ impl Map {
     /// # Errors
     /// When the set has no analysis.
     pub fn deviation(&self, sets: &Sets, set: usize) -> Result<[f64; 2], AnalysisError> {
-        let tower = self.field.with(&sets.set(set));
+        let tower = self.field.with(&sets.set(set), sets.scales[set].0);
         let sizes = Sizes::of(&tower);
         let response = Analyst::new(&tower).analyse(&sizes.values(&tower))?;
         let full = full_values(&response)?;
