@@ -659,6 +659,42 @@ fn a_stiff_tower_rocks_on_its_base_as_a_rigid_body() {
 }
 
 #[test]
+fn short_columns_give_in_shear() {
+    // Timoshenko: 1/k = h^3/(12 E I) + h/(5/6 G A) between a fixed foot and a beam
+    // that does not give; 1.5 m by 0.9 m, both directions.
+    let (height, x, y) = (3.0_f64, 1.5_f64, 0.9_f64);
+    for (direction, width, breadth) in [(Direction::X, x, y), (Direction::Y, y, x)] {
+        let mut tower = equal_storeys(1, height, 1e5, 1e7);
+        let corners = [(-5.0, -5.0), (5.0, -5.0), (5.0, 5.0), (-5.0, 5.0)]
+            .map(|(x, y)| node(&mut tower, x, y));
+        let beams = beam_group(&mut tower, 1e3, 100.0);
+        for at in corners {
+            column(&mut tower, at, x, true);
+            giant_column(&mut tower, at);
+        }
+        for group in &mut tower.column_groups {
+            let zone = &mut group.zones[0];
+            if zone.width_x == x {
+                zone.width_y = y;
+            }
+        }
+        for i in 0..4 {
+            beam(&mut tower, beams, corners[i], corners[(i + 1) % 4]);
+        }
+        tower.lateral_cases = vec![case(direction, Action::Wind, vec![1e6])];
+        let moved = moved(&tower, 0);
+        let found = match direction {
+            Direction::X => moved.x(1),
+            Direction::Y => moved.y(1),
+        };
+        let inertia = breadth * width.powi(3) / 12.0;
+        let give = height.powi(3) / (12.0 * E * inertia)
+            + height / (5.0 / 6.0 * E / 2.4 * breadth * width);
+        assert!(off(found, 1e6 * give / 4.0) < 1e-6, "{found}");
+    }
+}
+
+#[test]
 fn column_with_a_beam_pinned_at_its_far_end() {
     // Slope deflection: a beam of I and L pinned far away holds the column's top
     // with 3 E Ib/L; k = 12 i/h^2 (i + s)/(4 i + s), i = E Ic/h, s = 3 E Ib/L.

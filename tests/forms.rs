@@ -138,3 +138,35 @@ fn stated_masses_become_gravity_and_loads_become_mass() {
     assert_eq!(tower.storeys[4].floor.dead, 5500.0);
     assert_eq!(tower.storeys[4].floor.mass.mass, 44.4e3);
 }
+
+#[test]
+fn odd_but_allowed_things_are_warned_of_with_their_place() {
+    assert_eq!(
+        read("setback.toml").warnings.len(),
+        1,
+        "the transfer at storey 3 alone"
+    );
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/towers/setback.toml");
+    let text = std::fs::read_to_string(path).expect("a readable file");
+    let text = text
+        .replace("open_end = \"lean\"", "open_end = \"pinned\"")
+        .replace("at_m = [20, 16]", "at_m = [20, 20.5]")
+        .replace("mass_centre_m = [11.5, 10]", "mass_centre_m = [2, 10]")
+        .replace("thickness_mm = 300 }", "thickness_mm = 300, given_mm = 320, vary = { max_mm = 420, module_mm = 50, min_mm = 200, thin = true } }");
+    let text = format!(
+        "{text}\n[[nodes]]\nid = \"spare\"\nat_m = [20, 10]\n[[options]]\nid = \"nothing\"\n"
+    );
+    let file = parse_tower(&text, "odd.toml").unwrap_or_else(|faults| panic!("{faults}"));
+    let expected = [
+        "odd.toml:28: storeys[2].mass_centre_m: lies outside the floor's extent",
+        "odd.toml:47: nodes[6] \"m\".at_m: lies outside the floor of storey 1, where it carries something",
+        "odd.toml:53: wall_groups[1] \"core\".zones[2].thickness_mm: 300 is not 320 plus whole steps of 50",
+        "odd.toml:75: walls[4] \"km\".storeys: starts at storey 3 on its end nodes alone (a transfer)",
+        "odd.toml:83: links[1] \"ad\".from: no panel stands in line with the link at node \"a\" in storeys 1 to 12: its end is pinned there",
+        "odd.toml:84: links[1] \"ad\".to: no panel stands in line with the link at node \"d\" in storeys 1 to 12: its end is pinned there",
+        "odd.toml:136: nodes[7] \"spare\": carries no wall and no column",
+        "odd.toml:136: nodes[7] \"spare\": stands where node \"k\" does, without being joined to it",
+        "odd.toml:139: options[1] \"nothing\": no wall and no link belongs to it",
+    ];
+    assert_eq!(file.warnings, expected);
+}

@@ -252,3 +252,27 @@ fn everything_that_weighs_arrives_at_the_foot() {
     let sizes = Sizes::of(&tower);
     assert!(off(total_load(&tower, &response.masses, &sizes), total) < 1e-12);
 }
+
+#[test]
+fn floors_carry_the_mass_and_spin_of_half_the_members_above_and_below() {
+    // A thin rod has m L^2/12 about its middle, a rectangle m (a^2 + b^2)/12; the
+    // rest is the parallel-axis theorem.
+    let mut tower = cross(2, StructureMass::All);
+    let at = node(&mut tower, 6.0, 8.0);
+    column(&mut tower, at, 1.2, false);
+    let response = analyse(&tower);
+    let density = 2_500.0;
+    for (level, storeys) in [(0, 1.0), (1, 0.5)] {
+        let wall = storeys * density * 5.0 * 0.4 * 3.5;
+        let column = storeys * density * 1.44 * 3.5;
+        let floor = &response.masses.floors[level];
+        let mass = 5e5 + 3.0 * wall + column;
+        assert!(off(floor.mass, mass) < 1e-12);
+        let centre = floor.centre();
+        assert!((centre.x - 6.0 * column / mass).abs() < 1e-9);
+        assert!((centre.y - 8.0 * column / mass).abs() < 1e-9);
+        let polar =
+            5e7 + wall * (3.0 * 25.0 / 12.0 + 2.0 * 225.0) + column * (2.0 * 1.44 / 12.0 + 100.0);
+        assert!(off(floor.polar, polar) < 1e-12, "{} {polar}", floor.polar);
+    }
+}

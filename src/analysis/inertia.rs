@@ -9,6 +9,7 @@ use num_dual::Dual64;
 
 use super::members::{Source, Standing, deep_arms, storey_members};
 use super::stiffness::{plan_nodes, reading, seeds};
+use crate::elements::bounds::{Affine, Place, SizeBox, volume_minorant};
 use crate::elements::{Member, Reading};
 use crate::model::sizes::Sizes;
 use crate::model::tower::{Extent, Floor, LimitState, Point, StoreyRange, StructureMass, Tower};
@@ -234,6 +235,80 @@ impl MassModel {
             bodies,
             size_count: sizes.len(),
         }
+    }
+}
+
+/// Affine minorants of every body's volume over a box of sizes.
+#[derive(Debug, Clone)]
+pub struct VolumeMinorants(Vec<Affine>);
+
+impl MassModel {
+    /// Over `within`, with the core at rest.
+    pub fn minorants(&self, sizes: &Sizes, within: &SizeBox) -> VolumeMinorants {
+        let place = Place {
+            nodes: &self.nodes,
+            core_x: sizes.core_x(),
+            core_y: sizes.core_y(),
+        };
+        let of_body = |body: &Unweighed| volume_minorant(&body.member, &place, within);
+        VolumeMinorants(self.bodies.iter().map(of_body).collect())
+    }
+
+    /// Minorant of one body's volume, and its density.
+    pub fn bound<'a>(&self, minorants: &'a VolumeMinorants, body: usize) -> (&'a Affine, f64) {
+        (&minorants.0[body], self.bodies[body].density)
+    }
+
+    /// An affine function of the sizes that nowhere exceeds all concrete, m3.
+    pub fn concrete_minorant(
+        &self,
+        minorants: &VolumeMinorants,
+        size_count: usize,
+    ) -> (f64, Vec<f64>) {
+        let (mut constant, mut slopes) = (0.0, vec![0.0; size_count]);
+        for piece in &self.pieces {
+            let volume = &minorants.0[piece.body];
+            constant += volume.constant;
+            for &(size, slope) in &volume.slopes {
+                slopes[size] += slope;
+            }
+        }
+        (constant, slopes)
+    }
+
+    /// An affine function of the sizes that nowhere exceeds `u' M u`, `u` floor
+    /// motions of levels 1 to N: (constant, slope by size).
+    pub fn energy_minorant(
+        &self,
+        minorants: &VolumeMinorants,
+        masses: &Masses,
+        u: &[f64],
+    ) -> (f64, Vec<f64>) {
+        let of = |level: usize| &u[3 * level..3 * level + 3];
+        let fixed = self.fixed.iter().enumerate();
+        let mut constant: f64 = fixed
+            .map(|(level, floor)| floor.product(of(level), of(level)))
+            .sum();
+        let mut slopes = vec![0.0; masses.size_count];
+        if !self.moves_floors {
+            return (constant, slopes);
+        }
+        for piece in &self.pieces {
+            let body = &masses.bodies[piece.body];
+            let energy: f64 = piece
+                .levels
+                .iter()
+                .filter(|(level, _)| *level > 0)
+                .map(|&(level, share)| share * body.inertia.product(of(level - 1), of(level - 1)))
+                .sum();
+            let per_volume = energy / body.volume;
+            let volume = &minorants.0[piece.body];
+            constant += per_volume * volume.constant;
+            for &(size, slope) in &volume.slopes {
+                slopes[size] += per_volume * slope;
+            }
+        }
+        (constant, slopes)
     }
 }
 

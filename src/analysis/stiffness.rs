@@ -9,6 +9,7 @@ use num_dual::Dual64;
 use super::freedoms::{Freedoms, Level};
 use super::members::{deep_arms, storey_members};
 use crate::blocktri::{BlockTridiagonal, Dense};
+use crate::elements::bounds::{Affine, Place, SizeBox, stiffness_majorants};
 use crate::elements::{Member, Reading, Row, Scalar};
 use crate::model::sizes::Sizes;
 use crate::model::tower::{Base, LimitState, Point, Tower};
@@ -248,6 +249,56 @@ impl Stiffness {
             }
         }
         gradient
+    }
+}
+
+/// Majorants of every row's stiffness, by kind and row, over a box of sizes.
+#[derive(Debug, Clone)]
+pub struct RowMajorants(Vec<Vec<Vec<Affine>>>);
+
+impl Stiffness {
+    /// Over `within`, with the core at rest.
+    pub fn majorants(&self, sizes: &Sizes, within: &SizeBox) -> RowMajorants {
+        let place = Place {
+            nodes: &self.nodes,
+            core_x: sizes.core_x(),
+            core_y: sizes.core_y(),
+        };
+        let of_kind = |kind: &Kind| {
+            kind.members
+                .iter()
+                .flat_map(|(member, _)| stiffness_majorants(member, &place, within))
+                .collect()
+        };
+        RowMajorants(self.kinds.iter().map(of_kind).collect())
+    }
+
+    /// An affine function of the sizes that nowhere in the majorants' box lies
+    /// below `q' K q`, and close to it at `sizes`: (constant, slope by size).
+    pub fn energy_majorant(
+        &self,
+        majorants: &RowMajorants,
+        q: &[f64],
+        sizes: &[f64],
+    ) -> (f64, Vec<f64>) {
+        let mut constant: f64 = self.springs.iter().map(|&(i, k)| k * q[i] * q[i]).sum();
+        let mut slopes = vec![0.0; self.size_count];
+        for strip in &self.strips {
+            let kind = &self.kinds[strip.kind];
+            let q = &q[strip.start..strip.start + kind.width];
+            for (row, options) in majorants.0[strip.kind].iter().enumerate() {
+                let square = kind.rows.strain(row, q).powi(2);
+                let tightest = options
+                    .iter()
+                    .min_by(|a, b| a.at(sizes).total_cmp(&b.at(sizes)))
+                    .expect("every row has a majorant");
+                constant += square * tightest.constant;
+                for &(size, slope) in &tightest.slopes {
+                    slopes[size] += square * slope;
+                }
+            }
+        }
+        (constant, slopes)
     }
 }
 

@@ -10,6 +10,7 @@
 
 pub mod arm;
 pub mod beam;
+pub mod bounds;
 pub mod column;
 pub mod link;
 pub mod wall;

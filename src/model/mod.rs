@@ -3,9 +3,9 @@
 //! This room reads tower files and says everything that is wrong with them. It
 //! must never know about matrices, verdicts or searching.
 //!
-//! On the way in: text, [`table`] (walking TOML), [`file`] (what is written),
-//! [`short`] (the short form spelt out), [`resolve`] (names become indices,
-//! units become SI), [`validate`] (rules of the whole), a [`tower::Tower`].
+//! On the way in: text, `table` (walking TOML), `file` (what is written),
+//! `short` (the short form spelt out), `resolve` (names become indices,
+//! units become SI), `validate` (rules of the whole), a [`tower::Tower`].
 
 pub mod error;
 mod file;

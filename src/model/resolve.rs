@@ -61,7 +61,8 @@ pub(super) fn default_imposed_share(imposed: f64) -> f64 {
 
 /// Mass of a floor whose loads are stated: uniform over its extent.
 pub(super) fn mass_of_loads(extent: Extent, dead: f64, imposed: f64, share: f64) -> FloorMass {
-    let mass = (dead + share * imposed) * area(extent) / GRAVITY;
+    // Rounded through tonnes, so that the mass itself can be printed exactly.
+    let mass = (dead + share * imposed) * area(extent) / GRAVITY / 1e3 * 1e3;
     FloorMass {
         mass,
         centre: centre(extent),

@@ -408,7 +408,7 @@ pub enum Action {
 }
 
 /// Storey forces in one direction, acting at every level's centre of floor
-/// extent plus `eccentricity`.
+/// extent. What an eccentricity adds is part of `torques`.
 #[derive(Debug, Clone, PartialEq)]
 pub struct LateralCase {
     pub name: String,

@@ -5,8 +5,8 @@ use std::ops::Range;
 
 use super::file::{FACTOR_KEYS, LIMITS, LimitKind};
 use super::resolve::{
-    MODULUS_SOURCE, along_run, dead_of_mass, default_imposed_share, mass_of_loads, torque_of,
-    uniform_inertia,
+    MODULUS_SOURCE, along_run, centre, dead_of_mass, default_imposed_share, mass_of_loads,
+    torque_of, uniform_inertia,
 };
 use super::tower::*;
 
@@ -14,8 +14,9 @@ use super::tower::*;
 /// to an equal tower.
 ///
 /// Numbers are printed as briefly as they can be read back exactly. Only
-/// rounding noise (within eight units in the last place of a number with at
-/// most twelve digits, such as 0.30000000000000004) is dropped. `comment` goes
+/// rounding noise in sizes and places (within eight units in the last place of
+/// a number with at most seven digits, such as 0.30000000000000004) is dropped.
+/// `comment` goes
 /// on top, behind number signs; it may have several lines, or be empty.
 pub fn full_form(tower: &Tower, comment: &str) -> String {
     let mut page = Page {
@@ -89,7 +90,10 @@ impl Page {
         self.head("[tower]");
         self.key("name", quoted(&tower.name));
         self.key("question", quoted(&tower.question));
-        self.key("reference_m", point(tower.reference));
+        // The default is left out, since halves of sums may need all digits.
+        if tower.reference != centre(tower.storeys[0].floor.extent) {
+            self.key("reference_m", point(tower.reference));
+        }
         self.head("[mass]");
         let structure = match tower.structure_mass {
             StructureMass::All => "all",
@@ -139,7 +143,9 @@ impl Page {
                     plain(extent.y_max)
                 ),
             );
-            let from_loads = follows_from_loads(floor, share);
+            // A load that follows from a stated mass need not be one that can be stated.
+            let stated = exact_number(floor.dead, floor.dead / 1e3, |number| number * 1e3);
+            let from_loads = stated.is_some() && follows_from_loads(floor, share);
             let from_mass =
                 floor.imposed == 0.0 && floor.dead == dead_of_mass(extent, floor.mass.mass);
             if from_loads || !from_mass {
@@ -155,7 +161,9 @@ impl Page {
             if !from_loads {
                 let mass = floor.mass;
                 self.key("mass_t", scaled(mass.mass, 1e3));
-                self.key("mass_centre_m", point(mass.centre));
+                if mass.centre != centre(extent) {
+                    self.key("mass_centre_m", point(mass.centre));
+                }
                 if mass.rotational_inertia != uniform_inertia(extent, mass.mass) {
                     self.key(
                         "rotational_inertia_t_m2",
@@ -444,7 +452,9 @@ impl Page {
                 self.key("kind", quoted("rotational springs"));
                 self.key("about_x_gnm_per_rad", scaled(*about_x, 1e9));
                 self.key("about_y_gnm_per_rad", scaled(*about_y, 1e9));
-                self.key("centre_m", point(*centre));
+                if *centre != tower.reference {
+                    self.key("centre_m", point(*centre));
+                }
             }
         }
     }
@@ -650,13 +660,10 @@ fn runs(key: &str, values: &[f64], zeros: bool) -> Vec<String> {
             last: last + 1,
         });
         if numbers[first] != numbers[last] {
-            let (start, end) = (plain(numbers[first]), plain(numbers[last]));
+            let (start, end) = (numbers[first], numbers[last]);
             items.push(format!("storeys = {storeys}, {key} = [{start}, {end}]"));
         } else if zeros || values[first] != 0.0 {
-            items.push(format!(
-                "storeys = {storeys}, {key} = {}",
-                plain(numbers[first])
-            ));
+            items.push(format!("storeys = {storeys}, {key} = {}", numbers[first]));
         }
         first = last + 1;
     }
@@ -720,12 +727,16 @@ fn brief(value: f64, guess: f64, to_si: impl Fn(f64) -> f64) -> String {
     brief_number(value, guess, to_si).to_string()
 }
 
+/// Sizes that a search makes from modules have no more digits than this; what
+/// lies within eight units in the last place of such a number is that number.
+const NOISE_DIGITS: usize = 7;
+
 /// The briefest number near `guess` that `to_si` takes to `value`, but for noise.
 fn brief_number(value: f64, guess: f64, to_si: impl Fn(f64) -> f64) -> f64 {
     let close = |number: &f64| (to_si(*number) - value).abs() <= 8.0 * f64::EPSILON * value.abs();
     short_numbers(guess)
         .find(|number| to_si(*number) == value)
-        .or_else(|| short_numbers(guess).find(close))
+        .or_else(|| short_numbers(guess).take(NOISE_DIGITS).find(close))
         .or_else(|| exact_number(value, guess, to_si))
         .unwrap_or(guess)
 }

@@ -3,9 +3,9 @@
 //!
 //! argmin's own states hold the best point by cost alone, which is wrong with
 //! constraints (an infeasible point is often the cheapest): `SearchState` ranks
-//! by violation first. argmin's observers must be `'static`, so each analysis
-//! is told to our observer by the notebook; the executor's observers can still
-//! be attached and see iterations.
+//! by violation first. argmin's observers must be `'static`, which a borrowed
+//! observer is not: each analysis is told to ours by the notebook instead, and
+//! argmin's own Ctrl-C handler (one per process) stays off.
 
 use std::cell::RefCell;
 use std::collections::HashMap;

@@ -590,10 +590,10 @@ pub(crate) fn nearest_by_rows(notebook: &Notebook, x: &[f64]) -> Option<Vec<f64>
     let upper = variables.iter().map(|v| v.upper).collect();
     let frame = Frame::continuous(&mut program, lower, upper);
     let mut possible = frame.add_rows(&mut program, notebook.rows());
-    for j in 0..x.len() {
+    for (j, &wanted) in x.iter().enumerate() {
         if let Some(y) = frame.columns[j] {
             let away = program.column(1.0, 0.0, 1.0);
-            let share = (x[j] - frame.lower[j]) / (frame.upper[j] - frame.lower[j]);
+            let share = (wanted - frame.lower[j]) / (frame.upper[j] - frame.lower[j]);
             possible &= program.row(&[(y, 1.0), (away, -1.0)], share);
             possible &= program.row(&[(y, -1.0), (away, -1.0)], -share);
         }

@@ -1,7 +1,7 @@
 //! Every lattice combination of a small problem: the reference that the
 //! searches are tested against, and an honest method where it is affordable.
 
-use super::frame::{module_value, modules_within};
+use super::frame::{binding_lattice, module_value, modules_within};
 use super::notebook::{Notebook, Refusal, rows_hold};
 use super::outcome::{Outcome, Stop};
 use super::problem::Problem;
@@ -32,20 +32,16 @@ pub fn enumerate(
 ) -> Result<Outcome, EnumerationError> {
     let mut levels: Vec<Vec<f64>> = Vec::new();
     for variable in problem.variables() {
-        levels.push(
-            if variable.lower == variable.upper && variable.lattice.is_none() {
-                vec![variable.lower]
-            } else if variable.lattice.is_none() {
-                return Err(EnumerationError::Continuous(variable.name.clone()));
-            } else {
-                match modules_within(variable, variable.lower, variable.upper) {
-                    Some((first, last)) => {
-                        (first..=last).map(|k| module_value(variable, k)).collect()
-                    }
-                    None => Vec::new(),
-                }
-            },
-        );
+        levels.push(if variable.lower == variable.upper {
+            vec![variable.lower]
+        } else if binding_lattice(variable).is_none() {
+            return Err(EnumerationError::Continuous(variable.name.clone()));
+        } else {
+            match modules_within(variable, variable.lower, variable.upper) {
+                Some((first, last)) => (first..=last).map(|k| module_value(variable, k)).collect(),
+                None => Vec::new(),
+            }
+        });
     }
     let count: f64 = levels.iter().map(|values| values.len() as f64).product();
     if count > allowed as f64 {

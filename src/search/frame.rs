@@ -7,7 +7,7 @@
 
 use super::linear_program::LinearProgram;
 use super::notebook::{Linearisation, ROW_ROUNDING};
-use super::problem::{LinearRow, Variable};
+use super::problem::{Lattice, LinearRow, Variable};
 
 pub(crate) struct Frame {
     pub lower: Vec<f64>,
@@ -50,7 +50,7 @@ impl Frame {
             on_lattice: true,
         };
         for (j, variable) in variables.iter().enumerate() {
-            let (step, column) = match variable.lattice {
+            let (step, column) = match binding_lattice(variable) {
                 Some(lattice) => {
                     let (first, last) = modules_within(variable, lower[j], upper[j])?;
                     frame.lower[j] = module_value(variable, first);
@@ -168,10 +168,16 @@ impl Frame {
     }
 }
 
+/// The lattice that binds a variable: none when its bounds leave one value,
+/// which then stands as it is (an existing size need not be on the module).
+pub(crate) fn binding_lattice(variable: &Variable) -> Option<Lattice> {
+    variable.lattice.filter(|_| variable.upper > variable.lower)
+}
+
 /// First and last k with `anchor + k module` within both the bounds and
 /// `lower..upper`; `None` when there is none or the variable has no lattice.
 pub(crate) fn modules_within(variable: &Variable, lower: f64, upper: f64) -> Option<(i64, i64)> {
-    let lattice = variable.lattice?;
+    let lattice = binding_lattice(variable)?;
     let rounding = 1e-9;
     let lower = (lower.max(variable.lower) - lattice.anchor) / lattice.module;
     let upper = (upper.min(variable.upper) - lattice.anchor) / lattice.module;
@@ -185,7 +191,7 @@ pub(crate) fn modules_within(variable: &Variable, lower: f64, upper: f64) -> Opt
 /// `anchor + k module`, always with the same last bit, so that a lattice point
 /// is recognised wherever it came from.
 pub(crate) fn module_value(variable: &Variable, k: i64) -> f64 {
-    match variable.lattice {
+    match binding_lattice(variable) {
         Some(lattice) => {
             (lattice.anchor + k as f64 * lattice.module).clamp(variable.lower, variable.upper)
         }
@@ -196,7 +202,7 @@ pub(crate) fn module_value(variable: &Variable, k: i64) -> f64 {
 /// The lattice point nearest to x, variable by variable; continuous variables
 /// keep their value. `None` when a variable has no lattice point at all.
 pub(crate) fn nearest_on_lattice(variables: &[Variable], x: &[f64]) -> Option<Vec<f64>> {
-    let snap = |(variable, &x): (&Variable, &f64)| match variable.lattice {
+    let snap = |(variable, &x): (&Variable, &f64)| match binding_lattice(variable) {
         None => Some(x.clamp(variable.lower, variable.upper)),
         Some(lattice) => {
             let (first, last) = modules_within(variable, variable.lower, variable.upper)?;

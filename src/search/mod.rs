@@ -6,6 +6,7 @@
 //! the lattice (`modular`), both working through one `notebook`, so that every
 //! linearisation and cut of the first serves the second.
 
+mod bound;
 mod bridge;
 mod constrained;
 pub mod exhaustive;
@@ -20,6 +21,7 @@ pub mod progress;
 pub mod settings;
 
 use constrained::TrustRegion;
+use frame::binding_lattice;
 use modular::LatticeSearch;
 use notebook::Notebook;
 use outcome::{Outcome, Stop};
@@ -32,14 +34,18 @@ use settings::Settings;
 ///
 /// `start` has one entry per variable; it is moved into the bounds and onto the
 /// nearest point of the linear rows when it is not there. The outcome's `best`
-/// is always admissible; look at `relaxed` for what the lattices cost.
+/// is always admissible (a variable whose bounds leave one value is held there,
+/// on its lattice or not); look at `relaxed` for what the lattices cost.
 pub fn solve(
     problem: &dyn Problem,
     start: &[f64],
     settings: &Settings,
     observer: &mut dyn Observer,
 ) -> Outcome {
-    let lattices = problem.variables().iter().any(|v| v.lattice.is_some());
+    let lattices = problem
+        .variables()
+        .iter()
+        .any(|v| binding_lattice(v).is_some());
     let mut notebook = Notebook::new(problem, settings, observer);
     if lattices {
         let share = settings.continuous_share * settings.max_analyses as f64;

@@ -21,8 +21,8 @@
 //!
 //! A linearisation says too little of a curved constraint, so that proposals
 //! tend to fail by a little, over and over when there are many variables. After
-//! every miss one proposal therefore keeps a margin to each constraint, as large
-//! as the model's error was lately; only programs without margins prove anything.
+//! every miss one proposal therefore keeps a margin to all constraints, as large
+//! as the model's error was there; only programs without margin prove anything.
 //!
 //! The region is first a few modules around the continuous optimum, then around
 //! the best point, then the whole lattice. When all three give nothing, the
@@ -39,9 +39,9 @@
 //! elastic master and infeasible points); J. Viswanathan and I. E. Grossmann
 //! 1990, Comput. Chem. Eng. 14 (softened rows for nonconvex functions).
 
-use std::collections::{BTreeMap, VecDeque};
+use std::collections::BTreeMap;
 
-use super::frame::{Frame, module_value, modules_within};
+use super::frame::{Frame, binding_lattice, module_value, modules_within};
 use super::linear_program::{Answer, LinearProgram};
 use super::notebook::{Linearisation, Notebook, Refusal, distance_squared, rows_hold, slope};
 use super::outcome::Stop;
@@ -56,8 +56,6 @@ const LESS_VIOLATION: f64 = 1e-3;
 const MIXED_IMPROVEMENT: f64 = 1e-4;
 /// Binary columns that shut points out of one program, at most.
 const MAX_BINARIES: usize = 240;
-/// Proposals whose errors make the margins.
-const ERRORS_KEPT: usize = 4;
 /// Objective linearisations in one program, at most.
 const MAX_OBJECTIVES: usize = 30;
 
@@ -70,8 +68,9 @@ pub(crate) struct LatticeSearch {
     tries: usize,
     /// Proposals in a row that did not improve.
     misses: usize,
-    /// What the latest proposals violated, by constraint: the model's error.
-    errors: VecDeque<BTreeMap<usize, f64>>,
+    /// Margin of cautious proposals: the model's largest error at the latest
+    /// miss, halved when nothing better keeps it.
+    caution: f64,
     /// All variables lie on lattices, so that a point can be shut out.
     pure: bool,
 }
@@ -122,7 +121,7 @@ impl LatticeSearch {
             trust: Trust::Own,
             tries: 0,
             misses: 0,
-            errors: VecDeque::new(),
+            caution: 0.0,
             pure: variables
                 .iter()
                 .all(|v| v.lattice.is_some() || v.lower == v.upper),
@@ -139,19 +138,29 @@ impl LatticeSearch {
         }
         // After each miss, one proposal with margins: a safe step to a feasible
         // point is worth more than another that only just fails.
-        let cautious = self.misses % 2 == 1 && !self.elastic();
+        // While nothing is feasible, every one after the first miss.
+        let cautious = if notebook.best().is_some() {
+            self.misses % 2 == 1
+        } else {
+            self.misses > 0
+        };
+        let mut margin = 0.0;
         let mut proposal = None;
-        if cautious {
-            proposal = self.propose(notebook, &self.margins());
+        if cautious && !self.elastic() {
+            margin = self.caution;
+            proposal = self.propose(notebook, margin);
         }
         if proposal.is_none() {
+            if margin > 0.0 {
+                (self.caution, margin) = (0.5 * margin, 0.0);
+            }
             if self.ask == Ask::Likely {
                 self.tries += 1;
                 if self.tries > notebook.settings.max_poll {
                     return self.go_on(notebook);
                 }
             }
-            proposal = self.propose(notebook, &BTreeMap::new());
+            proposal = self.propose(notebook, margin);
         }
         let Some(x) = proposal else {
             return self.go_on(notebook);
@@ -167,13 +176,8 @@ impl LatticeSearch {
             // Its linearisation, or its being shut out, forbids it from now on.
             Ok(index) => {
                 self.misses += 1;
-                let constraints = notebook.points[index].evaluation.constraints.iter();
-                let violated = constraints.filter(|c| c.value > 0.0);
-                self.errors
-                    .push_back(violated.map(|c| (c.id, c.value)).collect());
-                if self.errors.len() > ERRORS_KEPT {
-                    self.errors.pop_front();
-                }
+                // The model had promised -margin.
+                self.caution = margin + notebook.points[index].evaluation.worst().max(0.0);
                 None
             }
             Err(refusal) => stop_of(refusal),
@@ -213,18 +217,8 @@ impl LatticeSearch {
         matches!(self.ask, Ask::LessViolation | Ask::Likely)
     }
 
-    /// Largest recent error of the model of each constraint.
-    fn margins(&self) -> BTreeMap<usize, f64> {
-        let mut margins: BTreeMap<usize, f64> = BTreeMap::new();
-        for (&id, &error) in self.errors.iter().flatten() {
-            let margin = margins.entry(id).or_insert(0.0);
-            *margin = margin.max(error);
-        }
-        margins
-    }
-
     /// The integer program of the present question.
-    fn propose(&self, notebook: &Notebook, margins: &BTreeMap<usize, f64>) -> Option<Vec<f64>> {
+    fn propose(&self, notebook: &Notebook, margin: f64) -> Option<Vec<f64>> {
         let elastic = self.elastic();
         let variables = notebook.variables();
         let (lower, upper) = self.bounds(notebook);
@@ -238,7 +232,7 @@ impl LatticeSearch {
             elastic,
             self.delta(notebook),
         );
-        possible &= add_linearisations(&mut program, &frame, notebook, self, margins);
+        possible &= add_linearisations(&mut program, &frame, notebook, self, margin);
         // A cut speaks of feasible points only, not of how much others violate.
         possible &= self.ask == Ask::LessViolation || add_cuts(&mut program, &frame, notebook);
         if self.pure {
@@ -340,7 +334,7 @@ impl LatticeSearch {
         let steps: Vec<(usize, f64)> = (0..variables.len())
             .flat_map(|j| [-1, 1].map(|step| (j, step)))
             .filter_map(|(j, step)| {
-                let lattice = variables[j].lattice?;
+                let lattice = binding_lattice(&variables[j])?;
                 let k = ((point.x[j] - lattice.anchor) / lattice.module).round() as i64 + step;
                 let (first, last) =
                     modules_within(&variables[j], variables[j].lower, variables[j].upper)?;
@@ -468,14 +462,14 @@ fn same_row(a: &(Vec<f64>, f64), b: &(Vec<f64>, f64)) -> bool {
     near(a.1, b.1) && a.0.iter().zip(&b.0).all(|(&x, &y)| near(x, y))
 }
 
-/// Rows of the constraints: those nearest to governing at the middle of the box,
-/// up to the number allowed. Elastic: one slack for each constraint.
+/// Rows of the constraints: those nearest to governing at the best point (or the
+/// continuous optimum), up to the number allowed. Elastic: one slack for each constraint.
 fn add_linearisations(
     program: &mut LinearProgram,
     frame: &Frame,
     notebook: &Notebook,
     search: &LatticeSearch,
-    margins: &BTreeMap<usize, f64>,
+    margin: f64,
 ) -> bool {
     let variables = notebook.variables();
     let elastic = search.elastic();
@@ -485,6 +479,7 @@ fn add_linearisations(
     } else {
         notebook.settings.aim
     };
+    let reference = notebook.best().map_or(&search.relaxed, |best| &best.x);
     let mut rows: Vec<(f64, usize, Vec<f64>, f64)> = notebook
         .linearisations
         .iter()
@@ -492,10 +487,8 @@ fn add_linearisations(
             let origin = &notebook.points[linearisation.point].x;
             let kappa = trust.kappa(notebook, linearisation);
             let (a, upper) = frame.softened(variables, linearisation, origin, kappa);
-            let middle: f64 = (0..a.len())
-                .map(|j| a[j] * 0.5 * (frame.lower[j] + frame.upper[j]))
-                .sum();
-            (upper - middle, linearisation.id, a, upper)
+            let there: f64 = a.iter().zip(reference).map(|(a, x)| a * x).sum();
+            (upper - there, linearisation.id, a, upper)
         })
         .collect();
     rows.sort_by(|a, b| a.0.total_cmp(&b.0));
@@ -503,7 +496,6 @@ fn add_linearisations(
     let mut slacks: Vec<(usize, usize)> = Vec::new();
     let mut possible = true;
     for (_, id, a, upper) in rows {
-        let margin = margins.get(&id).copied().unwrap_or(0.0);
         let (mut terms, upper) = frame.row(&a, upper - aim - margin);
         if elastic {
             let most: f64 = terms

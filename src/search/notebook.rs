@@ -16,6 +16,7 @@
 
 use std::collections::BTreeMap;
 
+use super::frame::binding_lattice;
 use super::outcome::{Outcome, Point, Stop, TraceEntry};
 use super::problem::{Cut, Evaluation, EvaluationFailure, LinearRow, Problem, Variable};
 use super::progress::{Observer, Progress, Stage};
@@ -25,7 +26,7 @@ use super::settings::Settings;
 pub(crate) const ROW_ROUNDING: f64 = 1e-9;
 
 pub(crate) struct Notebook<'a> {
-    problem: &'a dyn Problem,
+    pub problem: &'a dyn Problem,
     observer: &'a mut dyn Observer,
     pub settings: &'a Settings,
     /// Analyses that the present stage may bring the count to.
@@ -164,7 +165,8 @@ impl<'a> Notebook<'a> {
         found.ok_or(Refusal::Failed)
     }
 
-    pub fn outcome(self, stop: Stop) -> Outcome {
+    pub fn outcome(mut self, stop: Stop) -> Outcome {
+        let lower_bound = super::bound::prove(&mut self);
         let point = |index: Option<usize>| index.map(|i| self.points[i].clone());
         Outcome {
             stop,
@@ -173,6 +175,7 @@ impl<'a> Notebook<'a> {
             relaxed: point(self.relaxed),
             analyses: self.analyses,
             failures: self.failures,
+            lower_bound,
             trace: self.trace,
         }
     }
@@ -389,7 +392,7 @@ pub(crate) fn on_lattice(variables: &[Variable], x: &[f64]) -> bool {
     variables.iter().zip(x).all(|(variable, &x)| {
         let rounding = ROW_ROUNDING * (1.0 + x.abs());
         let within = x >= variable.lower - rounding && x <= variable.upper + rounding;
-        let on = variable.lattice.is_none_or(|lattice| {
+        let on = binding_lattice(variable).is_none_or(|lattice| {
             let k = ((x - lattice.anchor) / lattice.module).round();
             (lattice.anchor + k * lattice.module - x).abs() <= rounding
         });
