@@ -14,7 +14,7 @@ use crate::model::tower::{ArmPlace, ArmSystem, StoreyRange, StructureMass, Tower
 /// Most places in a set.
 pub const MOST_LEVELS: usize = 4;
 /// Most sets in a map; a hundred bytes and more each.
-pub const MOST_SETS: usize = 2_000_000;
+pub const MOST_SETS: usize = 1_000_000;
 
 /// Why there is no map.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -45,9 +45,9 @@ pub enum Arms {
 }
 
 impl Arms {
-    /// Outriggers where the tower has any, else belts.
+    /// Outriggers, or belts where there are belts alone.
     pub fn usual(tower: &Tower) -> Self {
-        if tower.outriggers.arms.is_empty() {
+        if tower.outriggers.arms.is_empty() && !tower.belts.arms.is_empty() {
             Arms::Belts
         } else {
             Arms::Outriggers
