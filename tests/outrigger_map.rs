@@ -398,3 +398,27 @@ fn the_least_thickness_is_the_first_that_passes_in_full_analyses() {
     }
     assert!(found.len() > 2, "the limit tells sets apart: {found:?}");
 }
+
+#[test]
+fn a_search_starts_from_the_best_places() {
+    use corewright::schemes::layouts::{Layout, best_placed};
+    let mut tower = lopsided(12);
+    tower.outriggers.places = (2..=12).map(|k| free_place(k, k, 0.5)).collect();
+    tower.outriggers.max_places = 2;
+    tower.belts.places = vec![arm_place(4, 4, 0.3), free_place(9, 9, 0.3)];
+    tower.belts.max_places = 2;
+    let starts = best_placed(&tower);
+    let map = chart(&tower, &choice(Arms::Outriggers, false, 2)).expect("a map");
+    for position in map.responses() {
+        for best in map.bests(position) {
+            let set = map.by_size[best.size - 1].set(best.set);
+            let mut expected = Layout::of(&tower);
+            for (place, used) in expected.outriggers.iter_mut().enumerate() {
+                *used = set.contains(&place);
+            }
+            assert!(expected.belts[0], "belts stay as they stand");
+            assert!(starts.contains(&expected), "{expected:?}");
+        }
+    }
+    assert_eq!(starts, best_placed(&tower));
+}

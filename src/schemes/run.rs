@@ -4,7 +4,8 @@
 //! 1. *Screen.* Each layout's sizes are relaxed from modules and a few steps of
 //!    the gradient search show what it can do. Spaces of up to
 //!    [`Settings::screen_all`] layouts are screened whole; in larger ones a tree
-//!    grows from the given layout and from a few random ones: the best layouts
+//!    grows from the given layout, from those that the map of arm places finds
+//!    best by some quantity, and from a few random ones: the best layouts
 //!    of each generation have their neighbours screened, until none improves.
 //! 2. *Search.* The best layouts are searched to the end, in modules.
 //! 3. *Vary.* The best schemes are searched again with one of the groups that
@@ -387,6 +388,7 @@ impl Run<'_> {
         let mut random = Xoshiro256PlusPlus::seed_from_u64(self.settings.seed);
         let home = Layout::of(self.tower);
         let mut generation: Vec<Layout> = vec![home.clone()];
+        generation.extend(layouts::best_placed(self.tower));
         for _ in 0..RANDOM_STARTS {
             let mut layout = home.clone();
             for _ in 0..random.random_range(1..=4) {
