@@ -28,7 +28,7 @@ pub struct Inertia {
 }
 
 impl Inertia {
-    fn add(&mut self, other: &Inertia, factor: f64) {
+    pub(super) fn add(&mut self, other: &Inertia, factor: f64) {
         self.mass += factor * other.mass;
         self.moment_x += factor * other.moment_x;
         self.moment_y += factor * other.moment_y;
@@ -153,7 +153,7 @@ pub struct Weighed {
 }
 
 /// Floor masses, members' concrete, and derivatives, at the sizes of a tower.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub struct Masses {
     /// One per level from 1 to N.
     pub floors: Vec<Inertia>,
@@ -254,7 +254,11 @@ impl MassModel {
     }
 
     /// An affine function of the sizes that nowhere exceeds all concrete, m3.
-    pub fn concrete_minorant(&self, minorants: &VolumeMinorants, size_count: usize) -> (f64, Vec<f64>) {
+    pub fn concrete_minorant(
+        &self,
+        minorants: &VolumeMinorants,
+        size_count: usize,
+    ) -> (f64, Vec<f64>) {
         let (mut constant, mut slopes) = (0.0, vec![0.0; size_count]);
         for piece in &self.pieces {
             let volume = &minorants.0[piece.body];
@@ -276,8 +280,9 @@ impl MassModel {
     ) -> (f64, Vec<f64>) {
         let of = |level: usize| &u[3 * level..3 * level + 3];
         let fixed = self.fixed.iter().enumerate();
-        let mut constant: f64 =
-            fixed.map(|(level, floor)| floor.product(of(level), of(level))).sum();
+        let mut constant: f64 = fixed
+            .map(|(level, floor)| floor.product(of(level), of(level)))
+            .sum();
         let mut slopes = vec![0.0; masses.size_count];
         if !self.moves_floors {
             return (constant, slopes);
@@ -320,6 +325,25 @@ impl Masses {
             gradient[*size] += derivative.product(&u[range.clone()], &v[range]);
         }
         gradient
+    }
+
+    /// Sum over `(level index, d inertia / d size)` of what `of` makes of it, for
+    /// every size.
+    pub fn gradient_by_level(&self, of: impl Fn(usize, &Inertia) -> f64) -> Vec<f64> {
+        let mut gradient = vec![0.0; self.size_count];
+        self.each_slope(|level, size, derivative| gradient[size] += of(level, derivative));
+        gradient
+    }
+
+    /// Calls `take` with level index (0 for level 1), size and derivative.
+    pub fn each_slope(&self, mut take: impl FnMut(usize, usize, &Inertia)) {
+        for (level, size, derivative) in &self.by_size {
+            take(*level, *size, derivative);
+        }
+    }
+
+    pub fn size_count(&self) -> usize {
+        self.size_count
     }
 
     /// Concrete of one kind of member, m3.
