@@ -412,7 +412,9 @@ mod tests {
                 rule: Rule,
             }
             assert_eq!(
-                toml::from_str::<Holder>(&text).expect(rule.key()).rule,
+                toml::from_str::<Holder>(&text)
+                    .expect("a rule of the files")
+                    .rule,
                 rule
             );
         }
