@@ -295,7 +295,7 @@ impl CheckReport {
             Status::Infeasible
         };
         let centres = response.centres.iter().flatten().enumerate();
-        let cases = tower.lateral_cases.iter().zip(&response.cases);
+        let cases = response.cases.iter();
         Ok(CheckReport {
             origin,
             tower: TowerSummary::of(tower),
@@ -312,8 +312,8 @@ impl CheckReport {
                 })
                 .collect(),
             cases: cases
-                .map(|(case, moved)| CaseSummary {
-                    name: case.name.clone(),
+                .map(|moved| CaseSummary {
+                    name: moved.name.clone(),
                     storey_drift: moved.storey_drift.clone(),
                     top_drift: moved.top_drift,
                 })
