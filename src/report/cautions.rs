@@ -12,3 +12,7 @@ pub const CAUTIONS: [&str; 4] = [
     "A search looks at many designs but proves nothing: a cheaper scheme may exist, and \
      \"nothing found\" is not \"impossible\".",
 ];
+
+pub fn cautions() -> Vec<std::borrow::Cow<'static, str>> {
+    CAUTIONS.iter().map(|&text| text.into()).collect()
+}

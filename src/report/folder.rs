@@ -13,7 +13,8 @@ use std::path::{Path, PathBuf};
 use serde::Serialize;
 use tempfile::NamedTempFile;
 
-use super::cautions::CAUTIONS;
+use super::cautions::cautions;
+use super::detail::Detail;
 use super::numbers::signed_amount;
 use super::proposal_text::verdict;
 use super::summary::{
@@ -223,14 +224,14 @@ fn report(
         tower: TowerSummary::of(&proposal.given.tower),
         status,
         verdict: verdict(status, ended, &schemes),
-        ended,
+        ended: ended.into(),
         settings: SettingSummary::of(&circumstances.settings, circumstances.time_limit_s),
         coverage: CoverageSummary::of(&proposal.coverage),
         given,
         schemes,
         conflict: proposal.conflict.as_ref().map(ConflictSummary::of),
         warnings: circumstances.warnings,
-        cautions: CAUTIONS.to_vec(),
+        cautions: cautions(),
         origin: circumstances.origin,
     })
 }
@@ -257,11 +258,8 @@ fn summary(
         changes,
         results,
         quantities: QuantitySummary::of(&scheme.quantities, &scheme.response.masses),
-        sensitivities: scheme
-            .sensitivities
-            .iter()
-            .map(SensitivitySummary::of)
-            .collect(),
+        detail: Detail::of(&scheme.tower, &scheme.response),
+        sensitivities: SensitivitySummary::all(scheme),
     })
 }
 
