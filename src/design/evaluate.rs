@@ -59,10 +59,16 @@ impl LayoutProblem {
         self.variables.read(&Sizes::of(tower).values(tower))
     }
 
-    /// `tower` with the sizes of `x`.
+    /// `tower` with the sizes of `x`, those that vary in whole nanometres: steps
+    /// of a module leave a last digit behind (0.6 - 3 x 0.05 is not 0.45) that a
+    /// file of millimetres would not bring back.
     pub fn tower_at(&self, tower: &Tower, x: &[f64]) -> Tower {
         let mut changed = tower.clone();
-        Sizes::of(tower).apply(&mut changed, &self.variables.sizes_at(x));
+        let mut values = self.variables.sizes_at(x);
+        for &(size, _) in self.variables.follows.iter().flatten() {
+            values[size] = (values[size] * 1e9).round() / 1e9;
+        }
+        Sizes::of(tower).apply(&mut changed, &values);
         changed
     }
 }

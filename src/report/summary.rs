@@ -15,8 +15,8 @@ use crate::checks::{Check, all_pass, governing};
 use crate::model::sizes::Size;
 use crate::model::tower::{StoreyRange, Tower};
 use crate::schemes::conflict::Conflict;
-use crate::schemes::run::{Coverage, Settings};
-use crate::schemes::scheme::{Change, Changed, Key, Quantities, Scheme, Sensitivity, quantities};
+use crate::schemes::run::{Bound, Coverage, Settings};
+use crate::schemes::scheme::{Change, Changed, Key, Quantities, Scheme, Sensitivity};
 
 /// Where a report comes from.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -314,10 +314,13 @@ pub struct ProposalReport {
     pub status: Status,
     /// The answer in a sentence.
     pub verdict: String,
-    /// Why the search ended: "finished", "interrupted", "time limit" or "out of analyses".
+    /// Why the search ended: "finished", "interrupted", "time limit", "stopped"
+    /// (by a caller of the library) or "out of analyses".
     pub ended: Cow<'static, str>,
     pub settings: SettingSummary,
     pub coverage: CoverageSummary,
+    /// Absent where nothing is proven.
+    pub bound: Option<BoundSummary>,
     pub given: GivenSummary,
     /// Best first. When none passes: the nearest ones.
     pub schemes: Vec<SchemeSummary>,
@@ -365,6 +368,39 @@ impl CoverageSummary {
             layouts_searched: coverage.layouts_searched,
             analyses: coverage.analyses,
             failed_analyses: coverage.failed_analyses,
+        }
+    }
+}
+
+/// How little concrete any design of the stated space can do with.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct BoundSummary {
+    /// No design that passes the covered checks adds less; absent when none can
+    /// pass them at all.
+    pub added_concrete_m3: Option<f64>,
+    /// The covered checks cannot be met by any design of the space: proven.
+    pub impossible: bool,
+    /// Checks on which the bound stands; it knows nothing of the others.
+    pub covers: Vec<String>,
+    /// Concrete of walls in the tower as given: what gaps are shares of.
+    pub wall_concrete_m3: f64,
+    /// How far each scheme, best first, may be above the best possible, in % of
+    /// the walls' concrete; absent for schemes that do not pass.
+    pub gap_percent: Vec<Option<f64>>,
+}
+
+impl BoundSummary {
+    pub fn of(bound: &Bound, schemes: &[SchemeSummary]) -> Self {
+        let finite = bound.added_concrete.is_finite();
+        let gap = |scheme: &SchemeSummary| {
+            (finite && scheme.feasible).then(|| 100.0 * bound.gap(scheme.added_concrete_m3))
+        };
+        BoundSummary {
+            added_concrete_m3: finite.then_some(bound.added_concrete),
+            impossible: !finite,
+            covers: bound.covers.clone(),
+            wall_concrete_m3: bound.wall_concrete,
+            gap_percent: schemes.iter().map(gap).collect(),
         }
     }
 }
