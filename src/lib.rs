@@ -29,6 +29,9 @@ pub mod analysis;
 // The response against limits.
 pub mod checks;
 
+// Outrigger and belt places: every set of them, by low-rank updates.
+pub mod placement;
+
 // What may vary, and the road from variables to an evaluation.
 pub mod design;
 

@@ -12,7 +12,7 @@ use super::stiffness::{plan_nodes, reading, seeds};
 use crate::elements::bounds::{Affine, Place, SizeBox, volume_minorant};
 use crate::elements::{Member, Reading};
 use crate::model::sizes::Sizes;
-use crate::model::tower::{Extent, Floor, LimitState, Point, StructureMass, Tower};
+use crate::model::tower::{Extent, Floor, LimitState, Point, StoreyRange, StructureMass, Tower};
 
 /// Mass of one floor about the reference point.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
@@ -28,7 +28,8 @@ pub struct Inertia {
 }
 
 impl Inertia {
-    fn add(&mut self, other: &Inertia, factor: f64) {
+    /// Adds `factor` times another.
+    pub fn add(&mut self, other: &Inertia, factor: f64) {
         self.mass += factor * other.mass;
         self.moment_x += factor * other.moment_x;
         self.moment_y += factor * other.moment_y;
@@ -362,6 +363,11 @@ impl Masses {
     }
 }
 
+/// Levels that carry the mass of arms over `storeys`, each with its share.
+pub fn arm_levels(storeys: StoreyRange) -> [(usize, f64); 2] {
+    [(storeys.first - 1, 0.5), (storeys.last, 0.5)]
+}
+
 /// Area of a floor's extent, m2.
 pub fn area(extent: &Extent) -> f64 {
     (extent.x_max - extent.x_min) * (extent.y_max - extent.y_min)
@@ -412,11 +418,7 @@ fn pieces(tower: &Tower, sizes: &Sizes) -> (Vec<Piece>, Vec<Unweighed>) {
         }
     }
     for (storeys, standing) in deep_arms(tower, sizes, factors) {
-        place(
-            standing,
-            storeys.first,
-            [(storeys.first - 1, 0.5), (storeys.last, 0.5)],
-        );
+        place(standing, storeys.first, arm_levels(storeys));
     }
     (pieces, bodies)
 }

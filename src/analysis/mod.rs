@@ -6,6 +6,7 @@ pub mod analyst;
 pub mod freedoms;
 pub mod gravity;
 pub mod inertia;
+pub mod low_rank;
 pub mod members;
 pub mod modes;
 pub mod rigidity;

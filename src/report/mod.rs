@@ -13,6 +13,8 @@ pub mod check_text;
 pub mod detail;
 pub mod folder;
 pub mod numbers;
+pub mod placement_summary;
+pub mod placement_text;
 pub mod proposal_text;
 pub mod summary;
 mod tables;

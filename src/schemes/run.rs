@@ -209,13 +209,17 @@ pub fn propose(
     }
     let schemes = pick(pool, settings.schemes);
 
-    let stopped = watcher.should_stop();
     let spent = run.left() == 0;
     let feasible = schemes.iter().any(|scheme| scheme.feasible);
     let conflict = match schemes.first() {
-        Some(nearest) if !feasible && !stopped && !spent => Some(run.diagnose(nearest)),
+        Some(nearest) if !feasible && !watcher.should_stop() && !spent => {
+            Some(run.diagnose(nearest))
+        }
         _ => None,
     };
+    // A diagnosis cut short would name checks that were merely not searched.
+    let stopped = watcher.should_stop();
+    let conflict = conflict.filter(|_| !stopped);
     let coverage = Coverage {
         layouts_in_space: layouts::count(tower),
         layouts_screened: screened.len(),
