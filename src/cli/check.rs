@@ -1,7 +1,8 @@
 //! `check`: a tower as it stands, held against every check.
 
 use corewright::report::check_text::check_text;
-use corewright::report::folder::json;
+use corewright::report::folder::{json, write_whole};
+use corewright::report::page::check_page;
 use corewright::report::summary::CheckReport;
 use corewright::schemes::scheme::Scheme;
 
@@ -17,6 +18,9 @@ pub fn run(typed: &CheckArguments) -> Result<Answer, Failure> {
     let examined = on_threads(typed.threads, || Scheme::of(tower))?.map_err(failed)?;
     let warnings = input.file.warnings.clone();
     let report = CheckReport::new(input.origin(), &examined, warnings).map_err(failed)?;
+    if let Some(path) = &typed.report {
+        write_whole(path, &check_page(&report))?;
+    }
     let text = if typed.json {
         json(&report)
     } else {

@@ -23,9 +23,11 @@ pub fn picture(
         .set("aria-describedby", description_id.clone())
         .set("role", if values { "group" } else { "img" })
         .add(Title::new(title).set("id", title_id))
-        .add(Description::new().set("id", description_id).add(
-            svg::node::Text::new(description),
-        ));
+        .add(
+            Description::new()
+                .set("id", description_id)
+                .add(svg::node::Text::new(description)),
+        );
     if values {
         picture.set("class", "values").set("tabindex", 0)
     } else {

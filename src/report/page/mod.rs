@@ -20,18 +20,25 @@ use self::measures::Measure;
 use self::towers::{View, column_note};
 use super::numbers::{amount, fixed, signed_amount, thousands, utilisation};
 use super::summary::{
-    BoundSummary, CheckReport, ConflictSummary, CoverageSummary, Origin, ProposalReport,
-    SchemeSummary, Status, TowerSummary,
+    BoundSummary, CheckReport, ConflictSummary, CoverageSummary, Origin, ProposalReport, Status,
+    TowerSummary,
 };
 use super::words;
 
-const STYLE: &str = include_str!("page.css");
+const STYLE: &str = concat!(include_str!("page.css"), include_str!("plan.css"));
 const SCRIPT: &str = include_str!("page.js");
 
 /// The page of a whole search.
 pub fn proposal_page(report: &ProposalReport) -> String {
     let mut views = vec![View::given(&report.given)];
-    views.extend(report.schemes.iter().map(View::scheme));
+    let gaps = report
+        .bound
+        .as_ref()
+        .map(|bound| bound.gap_percent.as_slice());
+    for (index, scheme) in report.schemes.iter().enumerate() {
+        let gap = gaps.and_then(|gaps| gaps.get(index).copied().flatten());
+        views.push(View::scheme(scheme, gap));
+    }
     let head = Head {
         origin: &report.origin,
         tower: &report.tower,
@@ -46,7 +53,7 @@ pub fn proposal_page(report: &ProposalReport) -> String {
             (comparison(&views))
             (charts::tradeoff(&views))
         }
-        (proof(report.bound.as_ref(), &report.schemes))
+        (proof(report.bound.as_ref(), &views))
         @if let Some(conflict) = &report.conflict { (conflicting(conflict)) }
         (coverage(&report.coverage, &report.ended))
     };
@@ -69,7 +76,11 @@ pub fn check_page(report: &CheckReport) -> String {
 /// A plan as an SVG file that stands alone: the lowest storeys of the best
 /// scheme, or of the given tower when there is none.
 pub fn plan_picture(report: &ProposalReport) -> String {
-    let views: Vec<View> = report.schemes.iter().map(View::scheme).collect();
+    let views: Vec<View> = report
+        .schemes
+        .iter()
+        .map(|scheme| View::scheme(scheme, None))
+        .collect();
     let given = View::given(&report.given);
     let view = views.first().unwrap_or(&given);
     let measures = Measure::all(&report.given.results, &report.given.detail.cases);
@@ -232,7 +243,7 @@ fn comparison(views: &[View]) -> Markup {
                             td.n data-value=(view.added_m3) { (signed_amount(view.added_m3)) }
                             @if bounded {
                                 @match view.gap {
-                                    Some(gap) => td.n data-value=(gap) { (fixed(100.0 * gap, 2)) },
+                                    Some(gap) => td.n data-value=(gap) { (fixed(gap, 2)) },
                                     None => td.n data-value="" { "–" },
                                 }
                             }
@@ -258,7 +269,7 @@ fn comparison(views: &[View]) -> Markup {
     }
 }
 
-fn proof(bound: Option<&BoundSummary>, schemes: &[SchemeSummary]) -> Markup {
+fn proof(bound: Option<&BoundSummary>, views: &[View]) -> Markup {
     let Some(bound) = bound else {
         return html! {
             section aria-labelledby="proof" {
@@ -280,10 +291,10 @@ fn proof(bound: Option<&BoundSummary>, schemes: &[SchemeSummary]) -> Markup {
                 Some(least) => {
                     p { "Proven: no design of the whole space that meets the checks named here adds less than "
                         b #bound data-value=(least) { (signed_amount(least)) " m³" } " to the tower as given." }
-                    @if let Some((scheme, gap)) = schemes.iter().find_map(|scheme| Some((scheme, scheme.gap_share_of_walls?))) {
-                        p { "Scheme " (scheme.rank) " lies at most "
-                            b #gap data-value=(gap) { (fixed(100.0 * gap, 2)) " %" }
-                            " of all wall concrete (" (amount(bound.given_wall_concrete_m3)) " m³ as given) above the best possible." }
+                    @if let Some((view, gap)) = views.iter().find_map(|view| Some((view, view.gap?))) {
+                        p { (view.name) " lies at most "
+                            b #gap data-value=(gap) { (fixed(gap, 2)) " %" }
+                            " of all wall concrete (" (amount(bound.wall_concrete_m3)) " m³ as given) above the best possible." }
                     }
                 },
                 None => p { b { "Proven impossible:" } " no design of the whole space meets the checks named here together." },
