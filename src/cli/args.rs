@@ -42,6 +42,9 @@ pub enum Command {
     /// Map every set of one to four outrigger or belt places, by each quantity
     #[command(after_help = EXIT_CODES)]
     Outriggers(OutriggersArguments),
+    /// Make report.html again from a folder's schemes.json
+    #[command(after_help = EXIT_CODES)]
+    Report(ReportArguments),
     /// Print a tower file in full: every node, member and default spelt out
     #[command(after_help = EXIT_CODES)]
     Expand(ExpandArguments),
@@ -54,6 +57,9 @@ pub struct CheckArguments {
     /// Write JSON instead of text
     #[arg(long)]
     pub json: bool,
+    /// Write a report of the tower to this file too: one HTML page that needs no network
+    #[arg(long, value_name = "FILE")]
+    pub report: Option<PathBuf>,
     /// Threads to use [default: all cores]; changes nothing in the answer
     #[arg(long, value_name = "N", value_parser = count(1024))]
     pub threads: Option<usize>,
@@ -63,7 +69,7 @@ pub struct CheckArguments {
 pub struct ProposeArguments {
     /// Tower file (TOML); "-" reads standard input
     pub file: PathBuf,
-    /// Folder for scheme-01.toml ..., schemes.json and schemes.csv; made when missing
+    /// Folder for scheme-01.toml ..., schemes.json, schemes.csv and report.html; made when missing
     #[arg(long, value_name = "DIR")]
     pub out: PathBuf,
     /// Write schemes.json to standard output too, instead of text
@@ -135,6 +141,18 @@ pub enum MapsWanted {
     /// Everything that moves
     All,
     None,
+}
+
+#[derive(Debug, Args)]
+pub struct ReportArguments {
+    /// Folder that propose wrote
+    pub folder: PathBuf,
+    /// Write to this file instead of report.html in the folder
+    #[arg(long, short, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+    /// Write the best scheme's plan to this file too, as SVG
+    #[arg(long, value_name = "FILE")]
+    pub plan: Option<PathBuf>,
 }
 
 #[derive(Debug, Args)]

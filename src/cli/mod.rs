@@ -12,6 +12,7 @@ mod message;
 mod outriggers;
 mod progress;
 mod propose;
+mod report;
 mod signals;
 
 use std::process::ExitCode;
@@ -35,6 +36,7 @@ pub fn run() -> ExitCode {
         Command::Check(typed) => check::run(typed),
         Command::Propose(typed) => propose::run(typed, arguments.quiet),
         Command::Outriggers(typed) => outriggers::run(typed),
+        Command::Report(typed) => report::run(typed),
         Command::Expand(typed) => expand::run(typed),
     };
     match answer {
