@@ -77,7 +77,7 @@ fn outside_crates_come_in_by_their_own_doors() {
         ("faer", vec!["blocktri"]),
         ("microlp", vec!["search"]),
         ("argmin", vec!["search"]),
-        ("rayon", vec!["schemes", "cli"]),
+        ("rayon", vec!["placement", "schemes", "cli"]),
         ("clap", vec!["cli"]),
         ("indicatif", vec!["cli"]),
         ("toml", vec!["codes", "model", "report", "cli"]),

@@ -12,8 +12,8 @@ use super::actions::{
 };
 use super::combination::{Excited, Pull, Quantity, dot, multiply_dense};
 use super::freedoms::Freedoms;
-use super::gravity::{AxialStress, GravityModel};
-use super::inertia::{MassModel, Masses};
+use super::gravity::{AxialStress, GravityModel, PierBounds};
+use super::inertia::{MassModel, Masses, VolumeMinorants};
 use super::modes::{Class, Mode, Modes, full_shapes};
 use super::rigidity::{Centres, centres};
 use super::second_order::{Buckling, Geometric};
@@ -794,6 +794,62 @@ impl Analyst {
             *slope -= share * of_load;
         }
         gradient
+    }
+
+    /// Full shapes of modes of the last analysis, one column each, `phi' M phi = 1`.
+    pub fn mode_shapes(&self, masses: &Masses, modes: &[&Mode]) -> Dense {
+        let factor = self.states[0]
+            .factor
+            .as_ref()
+            .expect("shapes follow an analysis");
+        full_shapes(
+            modes,
+            masses,
+            factor,
+            &self.floor_numbers,
+            self.freedoms.count(),
+        )
+    }
+
+    /// Displacements over all freedoms under a lateral case, at the sizes
+    /// analysed last.
+    pub fn case_displacements(&self, case: usize) -> Vec<f64> {
+        let state = self.state(self.cases[case].state);
+        let factor = state
+            .factor
+            .as_ref()
+            .expect("displacements follow an analysis");
+        displacements(
+            factor,
+            &self.freedoms,
+            &self.floor_numbers,
+            &[self.case_forces(case)],
+        )
+        .col(0)
+        .to_vec()
+    }
+
+    /// Forces of a lateral case of the tower on the floor freedoms of levels 1 to N.
+    pub fn case_forces(&self, case: usize) -> &[f64] {
+        match &self.cases[case].kind {
+            CaseKind::Fixed(forces) => forces,
+            _ => &self.last().forces[case],
+        }
+    }
+
+    /// Stiffness of a limit state in use.
+    pub fn stiffness(&self, wanted: LimitState) -> &Stiffness {
+        &self.state(wanted).stiffness
+    }
+
+    /// Affine bounds of piers under gravity, over the box of `minorants`.
+    pub fn pier_bounds(&self, minorants: &VolumeMinorants) -> Vec<PierBounds> {
+        self.gravity
+            .pier_bounds(&self.tower, &self.sizes, &self.mass_model, minorants)
+    }
+
+    pub fn mass_model(&self) -> &MassModel {
+        &self.mass_model
     }
 
     /// Probe of a storey's drift (storey from 1) at one end of its floor.

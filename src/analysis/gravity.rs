@@ -11,7 +11,7 @@
 //! The tributary areas themselves come from a fixed sampling grid, so their
 //! derivative by the core's offset is a central difference over half a metre.
 
-use super::inertia::{MassModel, Masses, Piece, area};
+use super::inertia::{MassModel, Masses, Piece, VolumeMinorants, area};
 use super::members::{Source, walls_in};
 use crate::model::sizes::Sizes;
 use crate::model::tower::{Extent, GRAVITY, Point, StructureMass, Tower, Wall, zone_of};
@@ -253,6 +253,105 @@ impl GravityModel {
             floor.areas = tributary(tower, sizes, &floor.standing, &floor.extent);
         }
     }
+}
+
+/// Load and area of a pier as affine functions of the sizes; the load's never
+/// exceeds the load.
+#[derive(Debug, Clone, PartialEq)]
+pub struct PierBounds {
+    pub storey: usize,
+    /// N
+    pub load: (f64, Vec<f64>),
+    /// m2
+    pub area: (f64, Vec<f64>),
+    /// Pa
+    pub strength: f64,
+}
+
+impl GravityModel {
+    /// Piers whose load is that of the same walls above and of their own floors,
+    /// at the lowest storey of each run of equal walls, sizes and concrete: there
+    /// the stress is highest. Holds for the core where the model has it.
+    pub fn pier_bounds(
+        &self,
+        tower: &Tower,
+        sizes: &Sizes,
+        masses: &MassModel,
+        minorants: &VolumeMinorants,
+    ) -> Vec<PierBounds> {
+        let count = sizes.len();
+        // By pier (its walls): load so far, and what stood there in the storey above.
+        let mut above: Vec<(Vec<usize>, Sized)> = Vec::new();
+        let mut found: Vec<(Vec<usize>, PierBounds)> = Vec::new();
+        for (index, plan) in self.storeys.iter().enumerate().rev() {
+            let storey = index + 1;
+            let floor = &tower.storeys[index].floor;
+            let mut here = Vec::new();
+            for pier in &plan.piers {
+                let walls: Vec<usize> =
+                    pier.iter().map(|&slot| plan.standing.walls[slot]).collect();
+                let mut load = Sized::zero(count);
+                for &slot in pier {
+                    load.add(
+                        &self.floors[plan.floor].areas[slot],
+                        floor.dead + floor.imposed,
+                    );
+                    load.value -= plan.included[slot];
+                }
+                for &(slot, body, share) in
+                    plan.weights.iter().filter(|(slot, ..)| pier.contains(slot))
+                {
+                    debug_assert!(slot < plan.standing.slots());
+                    let (volume, density) = masses.bound(minorants, body);
+                    let factor = share * density * GRAVITY;
+                    load.value += factor * volume.constant;
+                    for &(size, slope) in &volume.slopes {
+                        load.by_size[size] += factor * slope;
+                    }
+                }
+                // Whole piers above whose walls all go on in this one. Others hand
+                // down more, which a lower bound may leave out.
+                for (other, carried) in &above {
+                    if other.iter().all(|wall| walls.contains(wall)) {
+                        load.add(carried, 1.0);
+                    }
+                }
+                let mut area = Sized::zero(count);
+                for &wall in &walls {
+                    let thickness = sizes.wall(tower, tower.walls[wall].group, storey);
+                    area.by_size[thickness] += wall_length(tower, wall);
+                }
+                let strength = tower.storeys[index].concrete.strength;
+                let bounds = PierBounds {
+                    storey,
+                    load: (load.value, load.by_size.clone()),
+                    area: (0.0, area.by_size),
+                    strength,
+                };
+                let lower = found.iter_mut().find(|(known, bounds_above)| {
+                    *known == walls
+                        && bounds_above.storey == storey + 1
+                        && bounds_above.area == bounds.area
+                        && bounds_above.strength == strength
+                });
+                match lower {
+                    Some((_, run)) => *run = bounds,
+                    None => found.push((walls.clone(), bounds)),
+                }
+                here.push((walls, load));
+            }
+            above = here;
+        }
+        found.into_iter().map(|(_, bounds)| bounds).collect()
+    }
+}
+
+fn wall_length(tower: &Tower, wall: usize) -> f64 {
+    let (a, b) = (
+        tower.position(tower.walls[wall].from),
+        tower.position(tower.walls[wall].to),
+    );
+    (b.x - a.x).hypot(b.y - a.y)
 }
 
 /// All gravity load of a tower, N: what the forces at its foot add up to.

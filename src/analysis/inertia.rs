@@ -12,7 +12,7 @@ use super::stiffness::{plan_nodes, reading, seeds};
 use crate::elements::bounds::{Affine, Place, SizeBox, volume_minorant};
 use crate::elements::{Member, Reading};
 use crate::model::sizes::Sizes;
-use crate::model::tower::{Extent, Floor, LimitState, Point, StructureMass, Tower};
+use crate::model::tower::{Extent, Floor, LimitState, Point, StoreyRange, StructureMass, Tower};
 
 /// Mass of one floor about the reference point.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
@@ -28,7 +28,8 @@ pub struct Inertia {
 }
 
 impl Inertia {
-    pub(super) fn add(&mut self, other: &Inertia, factor: f64) {
+    /// Adds `factor` times another.
+    pub fn add(&mut self, other: &Inertia, factor: f64) {
         self.mass += factor * other.mass;
         self.moment_x += factor * other.moment_x;
         self.moment_y += factor * other.moment_y;
@@ -253,6 +254,11 @@ impl MassModel {
         VolumeMinorants(self.bodies.iter().map(of_body).collect())
     }
 
+    /// Minorant of one body's volume, and its density.
+    pub fn bound<'a>(&self, minorants: &'a VolumeMinorants, body: usize) -> (&'a Affine, f64) {
+        (&minorants.0[body], self.bodies[body].density)
+    }
+
     /// An affine function of the sizes that nowhere exceeds all concrete, m3.
     pub fn concrete_minorant(
         &self,
@@ -376,6 +382,11 @@ impl Masses {
     }
 }
 
+/// Levels that carry the mass of arms over `storeys`, each with its share.
+pub fn arm_levels(storeys: StoreyRange) -> [(usize, f64); 2] {
+    [(storeys.first - 1, 0.5), (storeys.last, 0.5)]
+}
+
 /// Area of a floor's extent, m2.
 pub fn area(extent: &Extent) -> f64 {
     (extent.x_max - extent.x_min) * (extent.y_max - extent.y_min)
@@ -426,11 +437,7 @@ fn pieces(tower: &Tower, sizes: &Sizes) -> (Vec<Piece>, Vec<Unweighed>) {
         }
     }
     for (storeys, standing) in deep_arms(tower, sizes, factors) {
-        place(
-            standing,
-            storeys.first,
-            [(storeys.first - 1, 0.5), (storeys.last, 0.5)],
-        );
+        place(standing, storeys.first, arm_levels(storeys));
     }
     (pieces, bodies)
 }

@@ -8,6 +8,7 @@ pub mod combination;
 pub mod freedoms;
 pub mod gravity;
 pub mod inertia;
+pub mod low_rank;
 pub mod members;
 pub mod modes;
 pub mod rigidity;

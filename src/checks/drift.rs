@@ -10,7 +10,8 @@ use crate::model::tower::{Action, Limit, Tower};
 /// Ids of one case: two ends of every storey (up to 10,000) and of the top.
 const PER_CASE: usize = 20_010;
 
-fn storey_limit(tower: &Tower, action: Action) -> &Limit {
+/// What the storey drift of a case of `action` is held against.
+pub fn storey_limit(tower: &Tower, action: Action) -> &Limit {
     match action {
         Action::Wind => &tower.limits.wind_storey_drift,
         Action::Earthquake => &tower.limits.earthquake_storey_drift,
@@ -18,7 +19,7 @@ fn storey_limit(tower: &Tower, action: Action) -> &Limit {
 }
 
 /// The whole tower's lean is limited under wind only.
-fn top_limit(tower: &Tower, action: Action) -> Option<&Limit> {
+pub fn top_limit(tower: &Tower, action: Action) -> Option<&Limit> {
     match action {
         Action::Wind => Some(&tower.limits.wind_top_drift),
         Action::Earthquake => None,

@@ -9,6 +9,7 @@ mod check;
 mod expand;
 mod input;
 mod message;
+mod outriggers;
 mod progress;
 mod propose;
 mod signals;
@@ -33,6 +34,7 @@ pub fn run() -> ExitCode {
     let answer = match &arguments.command {
         Command::Check(typed) => check::run(typed),
         Command::Propose(typed) => propose::run(typed, arguments.quiet),
+        Command::Outriggers(typed) => outriggers::run(typed),
         Command::Expand(typed) => expand::run(typed),
     };
     match answer {

@@ -2,6 +2,7 @@
 
 use std::sync::Mutex;
 
+use super::cuts::CutMaker;
 use super::variables::Variables;
 use crate::analysis::analyst::{AnalysisError, Analyst, Response};
 use crate::analysis::inertia::Masses;
@@ -17,6 +18,7 @@ use crate::search::problem::{
 pub struct LayoutProblem {
     variables: Variables,
     given_concrete: f64,
+    cuts: Option<CutMaker>,
     analyst: Mutex<Analyst>,
 }
 
@@ -27,6 +29,7 @@ impl LayoutProblem {
         let analyst = Analyst::new(tower);
         let variables = Variables::of(tower, analyst.sizes());
         LayoutProblem {
+            cuts: CutMaker::of(&analyst, &variables, given_concrete),
             variables,
             given_concrete,
             analyst: Mutex::new(analyst),
@@ -41,6 +44,12 @@ impl LayoutProblem {
         self
     }
 
+    /// Checks that a lower bound on concrete covers, in words; empty when none
+    /// can be proven.
+    pub fn bound_covers(&self) -> &[String] {
+        self.cuts.as_ref().map_or(&[], CutMaker::covers)
+    }
+
     pub fn map(&self) -> &Variables {
         &self.variables
     }
@@ -50,10 +59,16 @@ impl LayoutProblem {
         self.variables.read(&Sizes::of(tower).values(tower))
     }
 
-    /// `tower` with the sizes of `x`.
+    /// `tower` with the sizes of `x`, those that vary in whole nanometres: steps
+    /// of a module leave a last digit behind (0.6 - 3 x 0.05 is not 0.45) that a
+    /// file of millimetres would not bring back.
     pub fn tower_at(&self, tower: &Tower, x: &[f64]) -> Tower {
         let mut changed = tower.clone();
-        Sizes::of(tower).apply(&mut changed, &self.variables.sizes_at(x));
+        let mut values = self.variables.sizes_at(x);
+        for &(size, _) in self.variables.follows.iter().flatten() {
+            values[size] = (values[size] * 1e9).round() / 1e9;
+        }
+        Sizes::of(tower).apply(&mut changed, &values);
         changed
     }
 }
@@ -83,6 +98,10 @@ impl Problem for LayoutProblem {
         &self.variables.rows
     }
 
+    fn objective_minorant(&self) -> Option<(f64, Vec<f64>)> {
+        self.cuts.as_ref().map(CutMaker::objective)
+    }
+
     fn evaluate(&self, x: &[f64]) -> Result<Evaluation, EvaluationFailure> {
         let failure = |error: AnalysisError| EvaluationFailure(error.to_string());
         let mut analyst = self
@@ -107,7 +126,10 @@ impl Problem for LayoutProblem {
                 .variables
                 .by_variable(&response.masses.total_concrete_by_size()),
             constraints,
-            cuts: Vec::new(),
+            cuts: match &self.cuts {
+                Some(maker) => maker.cuts(&analyst, &self.variables, &response),
+                None => Vec::new(),
+            },
         })
     }
 }

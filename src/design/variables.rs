@@ -1,6 +1,8 @@
 //! Variables of one layout: which sizes move, together or alone, within which
 //! bounds and modules, and the linear rules between zones.
 
+use super::cuts::lattice_values;
+use crate::elements::bounds::SizeBox;
 use crate::model::sizes::{Size, Sizes};
 use crate::model::tower::{LinkGroup, SizeZone, Tower, Vary, WallGroup, ZoneRules};
 use crate::search::problem::{Lattice, LinearRow, Variable};
@@ -105,6 +107,43 @@ impl Variables {
             }
         }
         values
+    }
+
+    /// `constant + slopes . sizes` as an affine function of the variables:
+    /// (constant, gradient).
+    pub fn affine(&self, constant: f64, slopes: &[f64]) -> (f64, Vec<f64>) {
+        let mut constant = constant;
+        let mut follows_any = vec![false; slopes.len()];
+        for follows in &self.follows {
+            for &(size, distance) in follows {
+                constant += slopes[size] * distance;
+                follows_any[size] = true;
+            }
+        }
+        for (size, slope) in slopes.iter().enumerate() {
+            if !follows_any[size] {
+                constant += slope * self.base[size];
+            }
+        }
+        (constant, self.by_variable(slopes))
+    }
+
+    /// The sizes that the variables' bounds and modules admit.
+    pub fn size_box(&self) -> SizeBox {
+        let mut within = SizeBox {
+            lower: self.base.clone(),
+            upper: self.base.clone(),
+            values: self.base.iter().map(|&value| vec![value]).collect(),
+        };
+        for (variable, follows) in self.list.iter().zip(&self.follows) {
+            let values = lattice_values(variable.lower, variable.upper, variable.lattice);
+            for &(size, distance) in follows {
+                within.lower[size] = variable.lower + distance;
+                within.upper[size] = variable.upper + distance;
+                within.values[size] = values.iter().map(|value| value + distance).collect();
+            }
+        }
+        within
     }
 
     /// A derivative by size, turned into one by variable.

@@ -33,7 +33,12 @@ impl Affine {
     }
 
     pub fn at(&self, sizes: &[f64]) -> f64 {
-        self.constant + self.slopes.iter().map(|&(i, slope)| slope * sizes[i]).sum::<f64>()
+        self.constant
+            + self
+                .slopes
+                .iter()
+                .map(|&(i, slope)| slope * sizes[i])
+                .sum::<f64>()
     }
 }
 
@@ -213,7 +218,11 @@ fn steepest_secant(size: usize, points: &[f64], values: &[f64]) -> Affine {
 fn scaled(affine: &Affine, factor: f64) -> Affine {
     Affine {
         constant: factor * affine.constant,
-        slopes: affine.slopes.iter().map(|&(size, slope)| (size, factor * slope)).collect(),
+        slopes: affine
+            .slopes
+            .iter()
+            .map(|&(size, slope)| (size, factor * slope))
+            .collect(),
     }
 }
 
@@ -248,7 +257,11 @@ mod tests {
     #[test]
     fn bounds_hold_at_every_admissible_size() {
         let nodes = fixed(&[(0.0, 0.0), (3.0, 0.0), (4.5, 0.0), (9.0, 0.0)]);
-        let place = Place { nodes: &nodes, core_x: 3, core_y: 4 };
+        let place = Place {
+            nodes: &nodes,
+            core_x: 3,
+            core_y: 4,
+        };
         let panel = Member::Panel(Panel {
             from: 0,
             to: 1,
@@ -273,7 +286,12 @@ mod tests {
         };
         let within = within();
         let mut tightest = f64::INFINITY;
-        for member in [panel, link(None, [0, 1]), link(None, [0, 0]), link(Some(0.3), [0, 1])] {
+        for member in [
+            panel,
+            link(None, [0, 1]),
+            link(None, [0, 0]),
+            link(Some(0.3), [0, 1]),
+        ] {
             let majorants = stiffness_majorants(&member, &place, &within);
             let minorant = volume_minorant(&member, &place, &within);
             for &a in &within.values[0] {

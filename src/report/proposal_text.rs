@@ -3,8 +3,8 @@
 use super::check_text::{heading, notes, push, section};
 use super::numbers::{fixed, signed_amount, signed_significant, thousands, utilisation};
 use super::summary::{
-    ConflictSummary, CoverageSummary, KeySummary, ProposalReport, Results, SchemeSummary,
-    SensitivitySummary, Status,
+    BoundSummary, ConflictSummary, CoverageSummary, KeySummary, ProposalReport, Results,
+    SchemeSummary, SensitivitySummary, Status,
 };
 use super::tables::{Column, lines, table, wrapped};
 use super::words;
@@ -19,6 +19,7 @@ pub fn proposal_text(report: &ProposalReport, folder: &str) -> String {
     push(&mut text, "");
     push(&mut text, &wrapped(&report.verdict, 2));
     push(&mut text, &coverage(&report.coverage));
+    push(&mut text, &wrapped(&bound(report.bound.as_ref()), 2));
     if report.settings.time_limit_s.is_some() {
         push(
             &mut text,
@@ -47,7 +48,12 @@ pub fn proposal_text(report: &ProposalReport, folder: &str) -> String {
 }
 
 /// The answer in a sentence; `ended` as in the report.
-pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String {
+pub fn verdict(
+    status: Status,
+    ended: &str,
+    schemes: &[SchemeSummary],
+    bound: Option<&BoundSummary>,
+) -> String {
     let passing = schemes.iter().filter(|scheme| scheme.feasible).count();
     let early = match ended {
         "finished" => String::new(),
@@ -70,7 +76,7 @@ pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String
                 .collect();
             format!(" The nearest scheme falls short in {}.", short.join("; "))
         }
-        None => " No scheme could be analysed.".to_owned(),
+        None => " No scheme came of it.".to_owned(),
     };
     match status {
         Status::Feasible => {
@@ -87,6 +93,10 @@ pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String
                 signed_amount(least)
             )
         }
+        Status::Infeasible if bound.is_some_and(|bound| bound.impossible) => format!(
+            "NOT POSSIBLE: a lower bound shows that no design of this space passes every check.{}",
+            nearest()
+        ),
         Status::Infeasible => format!(
             "NOT FOUND: nothing passes every check, {}.{}",
             words::NOT_PROVEN,
@@ -109,6 +119,39 @@ fn coverage(coverage: &CoverageSummary) -> String {
         count(coverage.analyses),
         count(coverage.failed_analyses)
     )
+}
+
+/// How far the best scheme may be from the best possible, as far as proven.
+fn bound(bound: Option<&BoundSummary>) -> String {
+    let Some(bound) = bound else {
+        return "Proven: nothing about what is the least possible (the core may move, or layouts \
+                were left out)."
+            .to_owned();
+    };
+    let covers = bound.covers.join(", ");
+    // A bound is rounded to the side on which it stays true.
+    let down = |value: f64| signed_amount(value.floor());
+    match (
+        bound.added_concrete_m3,
+        bound.gap_percent.first().copied().flatten(),
+    ) {
+        (None, _) => format!(
+            "Proven: no design within the stated bounds and layouts meets these checks together: \
+             {covers}."
+        ),
+        (Some(least), Some(gap)) => format!(
+            "Proven: no design of this space that passes adds less than {} m3, so the best scheme \
+             is at most {} % of all wall concrete above the best possible. This stands on: {covers}; \
+             the other checks can only raise it.",
+            down(least),
+            fixed((10.0 * gap.max(0.0)).ceil() / 10.0, 1)
+        ),
+        (Some(least), None) => format!(
+            "Proven: no design of this space that passes adds less than {} m3. This stands on: \
+             {covers}.",
+            down(least)
+        ),
+    }
 }
 
 fn conflicts(text: &mut String, conflict: &ConflictSummary) {
@@ -142,8 +185,8 @@ fn comparison(report: &ProposalReport) -> String {
         ("ratio", number),
         ("governed by", Column::Text),
         ("used", number),
-        ("changes", number),
-        ("floor lost m2", number),
+        ("steps", number),
+        ("floor m2", number),
     ]);
     let row = |rank: String, passes: bool, added: f64, results: &Results, changes: String, lost| {
         let governing = results.governing_check();
@@ -226,8 +269,28 @@ fn strongest(sensitivities: &[SensitivitySummary]) -> String {
             .abs()
             .total_cmp(&a.1.ratio_to_smaller.abs())
     });
+    let free = sensitivities
+        .iter()
+        .filter(|sensitivity| sensitivity.per_m3.is_none());
+    let mut moves = String::new();
+    for sensitivity in free {
+        // Slopes hold for small steps; 100 mm keeps the digits readable.
+        let by_100_mm = |slope: f64| signed_significant(100.0 * slope, 2);
+        let slopes = &sensitivity.per_mm;
+        push(
+            &mut moves,
+            &format!(
+                "  {}, 100 mm more: ratio {}, Tx {} s, Ty {} s, Ttwist {} s",
+                sensitivity.size,
+                by_100_mm(slopes.ratio_to_smaller),
+                by_100_mm(slopes.period_x_s),
+                by_100_mm(slopes.period_y_s),
+                by_100_mm(slopes.period_twist_s)
+            ),
+        );
+    }
     if costly.is_empty() {
-        return String::new();
+        return moves;
     }
     let number = Column::Number;
     let mut table = table(&[
@@ -248,5 +311,5 @@ fn strongest(sensitivities: &[SensitivitySummary]) -> String {
             fixed(10.0 * sensitivity.concrete_m3_per_mm, 2),
         ]);
     }
-    lines(&table)
+    lines(&table) + &moves
 }

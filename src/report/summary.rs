@@ -9,9 +9,10 @@ use crate::analysis::analyst::{AnalysisError, Response};
 use crate::analysis::inertia::{Masses, Part};
 use crate::checks::periods::Fundamental;
 use crate::checks::{Check, all_pass, governing};
+use crate::model::sizes::Size;
 use crate::model::tower::{StoreyRange, Tower};
 use crate::schemes::conflict::Conflict;
-use crate::schemes::run::{Coverage, Settings};
+use crate::schemes::run::{Bound, Coverage, Settings};
 use crate::schemes::scheme::{Change, Changed, Key, Quantities, Scheme, Sensitivity, quantities};
 
 /// Where a report comes from.
@@ -333,10 +334,13 @@ pub struct ProposalReport {
     pub status: Status,
     /// The answer in a sentence.
     pub verdict: String,
-    /// Why the search ended: "finished", "interrupted", "time limit" or "out of analyses".
+    /// Why the search ended: "finished", "interrupted", "time limit", "stopped"
+    /// (by a caller of the library) or "out of analyses".
     pub ended: &'static str,
     pub settings: SettingSummary,
     pub coverage: CoverageSummary,
+    /// Absent where nothing is proven.
+    pub bound: Option<BoundSummary>,
     pub given: GivenSummary,
     /// Best first. When none passes: the nearest ones.
     pub schemes: Vec<SchemeSummary>,
@@ -384,6 +388,39 @@ impl CoverageSummary {
             layouts_searched: coverage.layouts_searched,
             analyses: coverage.analyses,
             failed_analyses: coverage.failed_analyses,
+        }
+    }
+}
+
+/// How little concrete any design of the stated space can do with.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct BoundSummary {
+    /// No design that passes the covered checks adds less; absent when none can
+    /// pass them at all.
+    pub added_concrete_m3: Option<f64>,
+    /// The covered checks cannot be met by any design of the space: proven.
+    pub impossible: bool,
+    /// Checks on which the bound stands; it knows nothing of the others.
+    pub covers: Vec<String>,
+    /// Concrete of walls in the tower as given: what gaps are shares of.
+    pub wall_concrete_m3: f64,
+    /// How far each scheme, best first, may be above the best possible, in % of
+    /// the walls' concrete; absent for schemes that do not pass.
+    pub gap_percent: Vec<Option<f64>>,
+}
+
+impl BoundSummary {
+    pub fn of(bound: &Bound, schemes: &[SchemeSummary]) -> Self {
+        let finite = bound.added_concrete.is_finite();
+        let gap = |scheme: &SchemeSummary| {
+            (finite && scheme.feasible).then(|| 100.0 * bound.gap(scheme.added_concrete_m3))
+        };
+        BoundSummary {
+            added_concrete_m3: finite.then_some(bound.added_concrete),
+            impossible: !finite,
+            covers: bound.covers.clone(),
+            wall_concrete_m3: bound.wall_concrete,
+            gap_percent: schemes.iter().map(gap).collect(),
         }
     }
 }
@@ -546,7 +583,7 @@ pub struct SensitivitySummary {
     pub size: String,
     pub concrete_m3_per_mm: f64,
     pub per_mm: Slopes,
-    /// None for a size that costs no concrete.
+    /// None for the core's offset, which is not paid in concrete.
     pub per_m3: Option<Slopes>,
 }
 
@@ -559,9 +596,6 @@ pub struct Slopes {
     /// Worst storey drift of each lateral case, over height.
     pub storey_drift: Vec<f64>,
 }
-
-/// Concrete per metre of a size below which it is called free, m3/m.
-const FREE: f64 = 1e-6;
 
 impl SensitivitySummary {
     pub fn of(sensitivity: &Sensitivity) -> Self {
@@ -576,11 +610,14 @@ impl SensitivitySummary {
                 .map(|slope| slope / amount)
                 .collect(),
         };
+        // A core that moves costs next to nothing: links and arms grow a little.
+        let moves = matches!(sensitivity.size, Size::CoreX | Size::CoreY);
+        let costs = !moves && sensitivity.concrete != 0.0;
         SensitivitySummary {
             size: sensitivity.name.clone(),
             concrete_m3_per_mm: sensitivity.concrete / 1e3,
             per_mm: per(1e3),
-            per_m3: (sensitivity.concrete.abs() > FREE).then(|| per(sensitivity.concrete)),
+            per_m3: costs.then(|| per(sensitivity.concrete)),
         }
     }
 }

@@ -1,6 +1,8 @@
 //! The one look of all tables: columns apart by space, a line under the heads.
 
-use comfy_table::{CellAlignment, ContentArrangement, Table, TableComponent, presets};
+use comfy_table::{
+    CellAlignment, ColumnConstraint, ContentArrangement, Table, TableComponent, presets,
+};
 
 /// Characters a table may take; long words wrap inside their column.
 const WIDTH: u16 = 118;
@@ -9,6 +11,9 @@ const WIDTH: u16 = 118;
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Column {
     Text,
+    /// Text that is not broken into lines.
+    Title,
+    /// Set to the right, never broken.
     Number,
 }
 
@@ -23,10 +28,14 @@ pub fn table(heads: &[(&str, Column)]) -> Table {
         .set_header(heads.iter().map(|(head, _)| *head));
     for (index, (_, column)) in heads.iter().enumerate() {
         let column_of_table = table.column_mut(index).expect("made with the header");
+        column_of_table.set_padding((0, 2));
         column_of_table.set_cell_alignment(match column {
-            Column::Text => CellAlignment::Left,
+            Column::Text | Column::Title => CellAlignment::Left,
             Column::Number => CellAlignment::Right,
         });
+        if *column != Column::Text {
+            column_of_table.set_constraint(ColumnConstraint::ContentWidth);
+        }
     }
     table
 }

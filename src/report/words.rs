@@ -130,14 +130,14 @@ pub fn demand(check: &CheckSummary) -> String {
     } else {
         format!(" {unit}")
     };
-    format!("{}: {demand}{unit} against {limit}{unit}", check.name)
+    format!("{} {demand}{unit} against {limit}{unit}", check.name)
 }
 
 /// What governs, in a line.
 pub fn governs(results: &Results) -> String {
     match results.governing_check() {
         Some(check) => format!(
-            "{} ({:.1} % of the limit), {}",
+            "{} ({:.1} % of it), {}",
             demand(check),
             100.0 * check.utilisation,
             check.place

@@ -1,5 +1,7 @@
 //! Order among alternatives, and which of them differ in idea.
 
+use std::collections::BTreeSet;
+
 use super::scheme::{Scheme, layout_of};
 
 /// Best first: feasible before infeasible, then least concrete (feasible) or
@@ -42,14 +44,29 @@ pub fn distinct(a: &Scheme, b: &Scheme) -> bool {
     layout_of(a) != layout_of(b) || difference(a, b) >= FEWEST_APART
 }
 
-/// The best `wanted` schemes that differ in idea, best first.
+/// The best `wanted` schemes that differ in idea, best first. The best of each
+/// layout come before second ones of a layout, which would crowd out other ideas.
 pub fn pick(mut pool: Vec<Scheme>, wanted: usize) -> Vec<Scheme> {
     pool.sort_by(order);
+    let feasible = pool.iter().take_while(|scheme| scheme.feasible).count();
     let mut picked: Vec<Scheme> = Vec::new();
-    for scheme in pool {
-        if picked.len() < wanted && picked.iter().all(|known| distinct(known, &scheme)) {
-            picked.push(scheme);
+    // Infeasible schemes stand behind every feasible one, whatever their layout.
+    let infeasible = pool.split_off(feasible);
+    for group in [pool, infeasible] {
+        let (first, second): (Vec<Scheme>, Vec<Scheme>) = firsts_of_layouts(group);
+        for scheme in first.into_iter().chain(second) {
+            if picked.len() < wanted && picked.iter().all(|known| distinct(known, &scheme)) {
+                picked.push(scheme);
+            }
         }
     }
+    picked.sort_by(order);
     picked
+}
+
+/// The best scheme of each layout, and the others; both in the order of `pool`.
+fn firsts_of_layouts(pool: Vec<Scheme>) -> (Vec<Scheme>, Vec<Scheme>) {
+    let mut seen = BTreeSet::new();
+    pool.into_iter()
+        .partition(|scheme| seen.insert(layout_of(scheme)))
 }

@@ -26,6 +26,7 @@ use super::layouts::{self, Layout};
 use super::rank::pick;
 use super::scheme::Scheme;
 use crate::analysis::analyst::AnalysisError;
+use crate::analysis::inertia::Part;
 use crate::checks::Check;
 use crate::design::evaluate::{LayoutProblem, concrete};
 use crate::model::tower::Tower;
@@ -99,9 +100,32 @@ pub struct Proposal {
     /// Distinct schemes, best first. When none is feasible: the nearest ones.
     pub schemes: Vec<Scheme>,
     pub coverage: Coverage,
+    /// How little concrete any design of the space can do with; `None` where
+    /// nothing is proven (the core may move, or layouts were left out).
+    pub bound: Option<Bound>,
     /// Why nothing passes; only when nothing does and the run was not stopped.
     pub conflict: Option<Conflict>,
     pub ended: Ended,
+}
+
+/// A proven lower bound over the whole design space.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Bound {
+    /// No design that passes the covered checks adds less to the tower as given,
+    /// m3. Infinite when no design of the space can pass them.
+    pub added_concrete: f64,
+    /// Checks that the bound stands on; it knows nothing of the others.
+    pub covers: Vec<String>,
+    /// All concrete of walls in the tower as given, m3: what gaps are shares of.
+    pub wall_concrete: f64,
+}
+
+impl Bound {
+    /// How far a scheme may be above the best possible, as a share of all wall
+    /// concrete of the tower as given; at least the true distance.
+    pub fn gap(&self, added_concrete: f64) -> f64 {
+        (added_concrete - self.added_concrete) / self.wall_concrete
+    }
 }
 
 /// What was looked at.
@@ -135,6 +159,8 @@ impl Proposal {
 const SCREENING: usize = 8;
 /// Analyses of one full search, at most.
 const SEARCHING: usize = 90;
+/// Analyses of one full search that may go into its lower bound.
+const PROVING: usize = 6;
 /// Share of all analyses that screening may take.
 const SCREENING_SHARE: f64 = 0.4;
 /// Layouts whose neighbours are screened next, per generation of the tree.
@@ -174,7 +200,8 @@ pub fn propose(
     };
     let screened = run.screen();
     let searched = run.search(&screened);
-    let mut pool = run.verified(searched.iter().map(|(tower, _)| tower.clone()).collect());
+    let bound = run.bound(&screened, &searched, &given);
+    let mut pool = run.verified(searched.iter().map(|found| found.tower.clone()).collect());
     let varied = run.vary(&pool);
     pool.extend(run.verified(varied));
     if given.feasible {
@@ -182,13 +209,17 @@ pub fn propose(
     }
     let schemes = pick(pool, settings.schemes);
 
-    let stopped = watcher.should_stop();
     let spent = run.left() == 0;
     let feasible = schemes.iter().any(|scheme| scheme.feasible);
     let conflict = match schemes.first() {
-        Some(nearest) if !feasible && !stopped && !spent => Some(run.diagnose(nearest)),
+        Some(nearest) if !feasible && !watcher.should_stop() && !spent => {
+            Some(run.diagnose(nearest))
+        }
         _ => None,
     };
+    // A diagnosis cut short would name checks that were merely not searched.
+    let stopped = watcher.should_stop();
+    let conflict = conflict.filter(|_| !stopped);
     let coverage = Coverage {
         layouts_in_space: layouts::count(tower),
         layouts_screened: screened.len(),
@@ -207,6 +238,7 @@ pub fn propose(
         given,
         schemes,
         coverage,
+        bound,
         conflict,
         ended,
     })
@@ -233,6 +265,18 @@ struct Screened {
     merit: Merit,
     /// Variables of the best relaxed point.
     start: Option<Vec<f64>>,
+    /// No design of this layout adds less, m3.
+    lower_bound: Option<f64>,
+    covers: Vec<String>,
+}
+
+/// What the full search of a layout gave.
+#[derive(Debug, Clone)]
+struct Searched {
+    layout: Layout,
+    tower: Tower,
+    lower_bound: Option<f64>,
+    covers: Vec<String>,
 }
 
 /// Feasible relaxations by concrete, the others by violation; failures last.
@@ -299,6 +343,8 @@ impl Run<'_> {
                     layout,
                     merit: Merit::Failed,
                     start: None,
+                    lower_bound: None,
+                    covers: Vec::new(),
                 })
                 .collect(),
             Some(all) => {
@@ -320,7 +366,7 @@ impl Run<'_> {
                 let problem =
                     LayoutProblem::new(&layout.apply(self.tower), self.given_concrete).relaxed();
                 let start = problem.read(self.tower);
-                let outcome = self.solve(&problem, &start, each);
+                let outcome = self.solve(&problem, &start, each, 0);
                 let (merit, start) = Merit::of(&outcome);
                 let done = done.fetch_add(1, Ordering::Relaxed) + 1;
                 self.ledger
@@ -329,6 +375,8 @@ impl Run<'_> {
                     layout: layout.clone(),
                     merit,
                     start,
+                    lower_bound: outcome.lower_bound,
+                    covers: problem.bound_covers().to_vec(),
                 }
             })
             .collect()
@@ -374,8 +422,41 @@ impl Run<'_> {
         }
     }
 
-    /// The best layouts, searched in modules; with their outcomes.
-    fn search(&mut self, screened: &[Screened]) -> Vec<(Tower, Outcome)> {
+    /// The least of all layouts' bounds, where every layout of the space has one.
+    fn bound(&self, screened: &[Screened], searched: &[Searched], given: &Scheme) -> Option<Bound> {
+        if (screened.len() as f64) < layouts::count(self.tower) {
+            return None;
+        }
+        let mut least = f64::INFINITY;
+        let mut covers: Vec<String> = Vec::new();
+        for layout in screened {
+            let of_search = searched.iter().find(|found| found.layout == layout.layout);
+            let raised = of_search.and_then(|found| found.lower_bound);
+            let bound = match (layout.lower_bound, raised) {
+                (Some(a), Some(b)) => a.max(b),
+                (a, b) => a.or(b)?,
+            };
+            least = least.min(bound);
+            let told = layout
+                .covers
+                .iter()
+                .chain(of_search.iter().flat_map(|found| &found.covers));
+            for check in told {
+                if !covers.contains(check) {
+                    covers.push(check.clone());
+                }
+            }
+        }
+        let walls = |(part, volume): &(Part, f64)| (*part == Part::Walls).then_some(*volume);
+        Some(Bound {
+            added_concrete: least,
+            covers,
+            wall_concrete: given.quantities.concrete.iter().find_map(walls)?,
+        })
+    }
+
+    /// The best layouts, searched in modules.
+    fn search(&mut self, screened: &[Screened]) -> Vec<Searched> {
         let wanted = (SEARCHED_PER_SCHEME * self.settings.schemes).max(6);
         let each = (self.left() / wanted.min(screened.len()).max(1)).clamp(1, SEARCHING);
         let affordable = (self.left() / each).max(1);
@@ -394,7 +475,7 @@ impl Run<'_> {
                     .start
                     .clone()
                     .unwrap_or_else(|| problem.read(&tower));
-                let outcome = self.solve(&problem, &start, each);
+                let outcome = self.solve(&problem, &start, each, PROVING);
                 let done = done.fetch_add(1, Ordering::Relaxed) + 1;
                 self.ledger
                     .tell(Phase::Searching, done, chosen.len(), best_of(&outcome));
@@ -402,7 +483,12 @@ impl Run<'_> {
                     .best
                     .as_ref()
                     .or(outcome.least_infeasible.as_ref())?;
-                Some((problem.tower_at(&tower, &point.x), outcome))
+                Some(Searched {
+                    layout: candidate.layout.clone(),
+                    tower: problem.tower_at(&tower, &point.x),
+                    lower_bound: outcome.lower_bound,
+                    covers: problem.bound_covers().to_vec(),
+                })
             })
             .collect()
     }
@@ -427,7 +513,7 @@ impl Run<'_> {
             .filter_map(|tower| {
                 let problem = LayoutProblem::new(tower, self.given_concrete);
                 let start = problem.read(tower);
-                let outcome = self.solve(&problem, &start, each);
+                let outcome = self.solve(&problem, &start, each, PROVING);
                 let done = done.fetch_add(1, Ordering::Relaxed) + 1;
                 self.ledger
                     .tell(Phase::Varying, done, count, best_of(&outcome));
@@ -448,9 +534,17 @@ impl Run<'_> {
             .collect()
     }
 
-    fn solve(&self, problem: &LayoutProblem, start: &[f64], max_analyses: usize) -> Outcome {
+    /// `proving`: analyses that may go into raising the lower bound.
+    fn solve(
+        &self,
+        problem: &LayoutProblem,
+        start: &[f64],
+        max_analyses: usize,
+        proving: usize,
+    ) -> Outcome {
         let settings = search::settings::Settings {
             max_analyses,
+            proving,
             node_limit: NODES,
             ..Default::default()
         };
@@ -470,7 +564,7 @@ impl Run<'_> {
         let done = AtomicUsize::new(0);
         diagnose(&nearest.tower, failing, |tower| {
             let problem = LayoutProblem::new(tower, self.given_concrete);
-            let outcome = self.solve(&problem, &problem.read(tower), SEARCHING);
+            let outcome = self.solve(&problem, &problem.read(tower), SEARCHING, 0);
             let done = done.fetch_add(1, Ordering::Relaxed) + 1;
             self.ledger.tell(Phase::Diagnosing, done, done, None);
             outcome.best.is_some()

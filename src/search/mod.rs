@@ -6,6 +6,7 @@
 //! the lattice (`modular`), both working through one `notebook`, so that every
 //! linearisation and cut of the first serves the second.
 
+mod bound;
 mod bridge;
 mod constrained;
 pub mod exhaustive;

@@ -26,7 +26,7 @@ use super::settings::Settings;
 pub(crate) const ROW_ROUNDING: f64 = 1e-9;
 
 pub(crate) struct Notebook<'a> {
-    problem: &'a dyn Problem,
+    pub problem: &'a dyn Problem,
     observer: &'a mut dyn Observer,
     pub settings: &'a Settings,
     /// Analyses that the present stage may bring the count to.
@@ -165,7 +165,8 @@ impl<'a> Notebook<'a> {
         found.ok_or(Refusal::Failed)
     }
 
-    pub fn outcome(self, stop: Stop) -> Outcome {
+    pub fn outcome(mut self, stop: Stop) -> Outcome {
+        let lower_bound = super::bound::prove(&mut self);
         let point = |index: Option<usize>| index.map(|i| self.points[i].clone());
         Outcome {
             stop,
@@ -174,6 +175,7 @@ impl<'a> Notebook<'a> {
             relaxed: point(self.relaxed),
             analyses: self.analyses,
             failures: self.failures,
+            lower_bound,
             trace: self.trace,
         }
     }

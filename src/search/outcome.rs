@@ -18,6 +18,9 @@ pub struct Outcome {
     /// Analyses asked for, failed ones included, repeated points not.
     pub analyses: usize,
     pub failures: usize,
+    /// No feasible point has a lower objective; from cuts that hold at every
+    /// feasible point. `None`: nothing proven.
+    pub lower_bound: Option<f64>,
     pub trace: Vec<TraceEntry>,
 }
 

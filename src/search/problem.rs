@@ -84,6 +84,13 @@ pub trait Problem: Sync {
 
     fn rows(&self) -> &[LinearRow];
 
+    /// An affine function (constant, gradient) that nowhere in the bounds exceeds
+    /// the objective; `None` when there is none worth having. Only with it can a
+    /// lower bound be proven from cuts.
+    fn objective_minorant(&self) -> Option<(f64, Vec<f64>)> {
+        None
+    }
+
     /// # Errors
     /// [`EvaluationFailure`] when the point has no value.
     fn evaluate(&self, x: &[f64]) -> Result<Evaluation, EvaluationFailure>;

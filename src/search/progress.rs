@@ -11,6 +11,8 @@ pub enum Stage {
     Modular,
     /// Neighbours of the best lattice point.
     Poll,
+    /// Points that raise the lower bound.
+    Proving,
     /// Every combination in turn.
     Exhaustive,
 }

@@ -44,6 +44,9 @@ pub struct Settings {
     /// Node limit of each integer program (a count, not a time, so that the
     /// answer does not depend on the machine); default 300.
     pub node_limit: usize,
+    /// Analyses that may be spent on raising the lower bound after the search,
+    /// where the problem has an affine minorant; default 6. Taken from the budget.
+    pub proving: usize,
     /// Most linearisations in one program, those nearest to governing first;
     /// default 150.
     pub max_linearisations: usize,
@@ -66,6 +69,7 @@ impl Default for Settings {
             doubt: 0.1,
             max_poll: 40,
             node_limit: 300,
+            proving: 6,
             max_linearisations: 150,
         }
     }
