@@ -794,8 +794,6 @@ impl Analyst {
             *slope -= share * of_load;
         }
         gradient
-<<<<<<< HEAD
-=======
     }
 
     /// Full shapes of modes of the last analysis, one column each, `phi' M phi = 1`.
@@ -852,7 +850,6 @@ impl Analyst {
 
     pub fn mass_model(&self) -> &MassModel {
         &self.mass_model
->>>>>>> codes
     }
 
     /// Probe of a storey's drift (storey from 1) at one end of its floor.
