@@ -9,7 +9,8 @@ use corewright::schemes::run::Settings;
 
 const EXIT_CODES: &str = "\
 Exit codes:
-  0    it passes; for propose: at least one scheme passes every check
+  0    it passes; for propose: at least one scheme passes every check;
+       for compare: both towers pass; for report and expand: it is written
   1    it ran, and the answer is no, or none was found before a limit was reached
        (\"status\" in the JSON tells \"infeasible\" from \"undecided\")
   2    the command or the input is wrong, or a result cannot be written
@@ -42,6 +43,9 @@ pub enum Command {
     /// Map every set of one to four outrigger or belt places, by each quantity
     #[command(after_help = EXIT_CODES)]
     Outriggers(OutriggersArguments),
+    /// Set two towers side by side
+    #[command(after_help = EXIT_CODES)]
+    Compare(CompareArguments),
     /// Make report.html again from a folder's schemes.json
     #[command(after_help = EXIT_CODES)]
     Report(ReportArguments),
@@ -141,6 +145,17 @@ pub enum MapsWanted {
     /// Everything that moves
     All,
     None,
+}
+
+#[derive(Debug, Args)]
+pub struct CompareArguments {
+    /// Tower file (TOML)
+    pub first: PathBuf,
+    /// Tower file (TOML) to set against it
+    pub second: PathBuf,
+    /// Write JSON instead of text
+    #[arg(long)]
+    pub json: bool,
 }
 
 #[derive(Debug, Args)]

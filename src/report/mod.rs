@@ -10,6 +10,7 @@
 
 pub mod cautions;
 pub mod check_text;
+pub mod compare;
 pub mod detail;
 pub mod folder;
 pub mod numbers;

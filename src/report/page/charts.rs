@@ -338,7 +338,22 @@ pub fn tradeoff(views: &[View]) -> Markup {
         .map(|view| (x(view.changes.len()), y(view.added_m3)))
         .collect();
     drawing = drawing.add(polyline(&line_of_front, "front"));
-    for view in &passing {
+    for (index, view) in passing.iter().enumerate() {
+        // Designs at the same place share a label.
+        let same = |other: &&View| {
+            other.changes.len() == view.changes.len()
+                && signed_amount(other.added_m3) == signed_amount(view.added_m3)
+        };
+        let shared: Vec<&str> = passing
+            .iter()
+            .filter(|other| same(other))
+            .map(|other| other.name.as_str())
+            .collect();
+        let name = if passing[..index].iter().any(|other| same(&other)) {
+            String::new()
+        } else {
+            shared.join(", ").replace(", Scheme", ",")
+        };
         let at = (x(view.changes.len()), y(view.added_m3));
         let value = format!(
             "{}: {} changes, {} m³",
@@ -353,7 +368,7 @@ pub fn tradeoff(views: &[View]) -> Markup {
                     (10.0, 10.0),
                     if beaten(view) { "dot" } else { "dot front" },
                 ))
-                .add(label((at.0 + 9.0, at.1 + 4.0), &view.name, "size")),
+                .add(label((at.0 + 9.0, at.1 + 4.0), &name, "size")),
         );
     }
     html! {

@@ -125,7 +125,7 @@ fn page(head: &Head, views: &[View], middle: &Markup) -> String {
                     section aria-labelledby="glance" {
                         h2 #glance { @if several { "The tower as given and what is proposed" } @else { "At a glance" } }
                         div.cards {
-                            @for view in views { (card(view, tower, several)) }
+                            @for view in views { (card(view, &views[0], tower, several)) }
                         }
                     }
                     (middle)
@@ -180,7 +180,7 @@ fn status_class(status: Status) -> &'static str {
     }
 }
 
-fn card(view: &View, tower: &TowerSummary, several: bool) -> Markup {
+fn card(view: &View, first: &View, tower: &TowerSummary, several: bool) -> Markup {
     let results = view.results;
     html! {
         div.card {
@@ -196,7 +196,7 @@ fn card(view: &View, tower: &TowerSummary, several: bool) -> Markup {
                 dt { "Torsion" } dd { (fixed(results.periods.twist_s, 2)) " s" }
                 dt { "Ratio" } dd { (fixed(results.ratio_to_smaller, 3)) }
             }
-            p.why { (view.short_why()) }
+            p.why { (view.short_why(first)) }
         }
     }
 }

@@ -16,6 +16,8 @@ const MARGIN: f64 = 34.0;
 /// Drawn travel of the farthest corner.
 const SWING: f64 = 26.0;
 const HEIGHT: f64 = 260.0;
+/// Floors drawn in elevation, about.
+const FLOORS: usize = 22;
 
 pub fn figures(view: &View, tower: &TowerSummary) -> Markup {
     html! {
@@ -126,6 +128,10 @@ fn elevation(view: &View, tower: &TowerSummary, shape: &ModeShape, mode: &ModeSu
     let mut rest = Group::new().set("class", "rest");
     let mut moving = Group::new();
     for (index, motion) in shape.floors.iter().enumerate() {
+        let step = tower.floors.len().div_ceil(FLOORS);
+        if !(tower.floors.len() - 1 - index).is_multiple_of(step) {
+            continue;
+        }
         let floor = &tower.floors[index];
         let y = level(floor.level_m);
         let [from, to] = ends(index);

@@ -5,7 +5,9 @@ use maud::{Markup, PreEscaped, html};
 use super::measures::{self, Measure};
 use super::{charts, elevation, modes, passing, plan};
 use crate::report::detail::{Detail, GroupSummary, ZoneSummary};
-use crate::report::numbers::{amount, fixed, signed_amount, signed_significant, utilisation};
+use crate::report::numbers::{
+    against, amount, fixed, signed_amount, signed_significant, unit_beside, utilisation,
+};
 use crate::report::summary::{
     ChangeSummary, ChangedSummary, CheckReport, CheckSummary, GivenSummary, QuantitySummary,
     Results, SchemeSummary, SensitivitySummary, Status,
@@ -91,11 +93,11 @@ impl<'a> View<'a> {
     }
 
     /// One sentence for the client.
-    pub fn short_why(&self) -> String {
+    pub fn short_why(&self, first: &View) -> String {
         if self.why.is_some() && !self.changes.is_empty() {
-            return format!("{} {}.", moves(self.changes), outcome(self));
+            return format!("{} {}.", moves(self.changes), outcome(self, first));
         }
-        outcome(self)
+        outcome(self, first)
     }
 }
 
@@ -150,29 +152,42 @@ fn moves(changes: &[ChangeSummary]) -> String {
     text
 }
 
-fn outcome(view: &View) -> String {
-    let failing: Vec<&CheckSummary> = view
+/// What became of the checks that failed before, and what comes closest now.
+fn outcome(view: &View, first: &View) -> String {
+    let failing: Vec<String> = view
         .results
         .checks
         .iter()
         .filter(|check| check.fails())
+        .map(words::demand)
         .collect();
-    let governs = view.results.governing_check();
-    let why = view.why.is_some() && !view.changes.is_empty();
-    match (failing.as_slice(), governs) {
-        ([], Some(check)) if why => {
-            format!("every check is met; {} comes closest", words::demand(check))
+    let mended = |before: &CheckSummary| {
+        let now = view
+            .results
+            .checks
+            .iter()
+            .find(|check| check.name == before.name)?;
+        let was = against(before.demand, before.limit, &before.unit).0;
+        let is = against(now.demand, now.limit, &now.unit).0;
+        let unit = unit_beside(&now.unit);
+        let gap = if unit.is_empty() { "" } else { " " };
+        Some(format!("{} from {was} to {is}{gap}{unit}", now.name))
+    };
+    let before = first.results.checks.iter().filter(|check| check.fails());
+    let mended: Vec<String> = before.filter_map(mended).collect();
+    let closest = view.results.governing_check().map(words::demand);
+    let proposed = view.why.is_some() && !view.changes.is_empty();
+    match (failing.as_slice(), closest) {
+        ([], _) if proposed && !mended.is_empty() => {
+            format!("{}; every check is met", mended.join(", "))
         }
-        ([], Some(check)) => format!(
-            "Every check is met; {} comes closest.",
-            words::demand(check)
-        ),
-        ([], None) => "No check is judged".to_owned(),
-        (list, _) => {
-            let list: Vec<String> = list.iter().map(|check| words::demand(check)).collect();
-            let text = format!("falls short in {}", list.join("; "));
-            if why { text } else { format!("It {text}.") }
+        ([], Some(closest)) if proposed => {
+            format!("every check is still met; {closest} comes closest")
         }
+        ([], Some(closest)) => format!("Every check is met; {closest} comes closest."),
+        ([], None) => "No check is judged.".to_owned(),
+        (list, _) if proposed => format!("falls short in {}", list.join("; ")),
+        (list, _) => format!("It falls short in {}.", list.join("; ")),
     }
 }
 
@@ -193,23 +208,31 @@ pub fn article(
             @if let Some(file) = view.file { p.quiet { "Tower file: " (file) } }
             @if !view.changes.is_empty() { (changes(view, first)) }
 
+            div.halves {
+            div {
             h3 { "Plan" }
             (plan::figures(view, tower, list))
             div.pair {
                 @if !view.detail.geometry.wall_groups.is_empty() { (group(&view.detail.geometry.wall_groups, "Wall thickness, mm")) }
                 @if !view.detail.geometry.link_groups.is_empty() { (group(&view.detail.geometry.link_groups, "Depth of link beams, mm")) }
             }
-
+            }
+            div {
             h3 { "Elevation" }
             (elevation::figure(view, tower))
+            }
+            div {
 
             h3 { "What a cubic metre buys" }
             (charts::tornados(view, list))
             (sensitivity_table(view, list))
-
+            }
+            div {
             h3 { "Modes" }
             (modes::figures(view, tower))
             (mode_table(view))
+            }
+            }
 
             @if !view.detail.cases.is_empty() {
                 h3 { "Drift" }
@@ -353,8 +376,8 @@ fn check_table(view: &View) -> Markup {
             tbody { @for check in view.results.checks_by_urgency() { tr {
                 th scope="row" { (check.name) }
                 td { @if check.off { span.quiet { "switched off" } } @else { (passing(check.passes)) } }
-                @let texts = crate::report::numbers::against(check.demand, check.limit, &check.unit);
-                @let unit = crate::report::numbers::unit_beside(&check.unit);
+                @let texts = against(check.demand, check.limit, &check.unit);
+                @let unit = unit_beside(&check.unit);
                 td.n data-value=(check.demand) { (texts.0) @if !unit.is_empty() { " " (unit) } }
                 td.n data-value=(check.limit) { (texts.1) @if !unit.is_empty() { " " (unit) } }
                 td.n data-value=(check.utilisation) { (utilisation(check.utilisation)) (bar(check)) }
