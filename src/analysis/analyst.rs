@@ -21,10 +21,12 @@ use crate::model::tower::{LimitState, Tower};
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 pub enum AnalysisError {
     #[error(
-        "the tower can move without resistance: {freedom} ({state}); check that every part below is connected and supported"
+        "the tower can move without resistance: {freedom} ({state}); there: {nearby}; check that they hold it and are connected and supported below"
     )]
     Mechanism {
         freedom: String,
+        /// Members at the freedom, by name.
+        nearby: String,
         state: &'static str,
     },
     #[error("the modes could not be found: {0}")]
@@ -347,8 +349,12 @@ impl State {
         };
         if let Err(failure) = factored {
             self.factor = None;
+            if !(failure.pivot.is_finite() && failure.diagonal.is_finite()) {
+                return Err(AnalysisError::NotFinite("a stiffness"));
+            }
             return Err(AnalysisError::Mechanism {
                 freedom: freedoms.describe(failure.index, tower),
+                nearby: freedoms.nearby(failure.index, tower),
                 state: match self.state {
                     LimitState::Unfactored => "unfactored section properties",
                     LimitState::Factored => "factored section properties",
@@ -372,21 +378,48 @@ impl State {
 }
 
 impl Response {
+    /// Nothing that is not a finite number leaves an analysis.
     fn finite(&self) -> Result<(), AnalysisError> {
-        if !self.modes.list.iter().all(|mode| mode.period.is_finite()) {
-            return Err(AnalysisError::NotFinite("a period"));
-        }
-        if !self
-            .cases
-            .iter()
-            .flat_map(|case| &case.floors)
-            .all(|u| u.is_finite())
-        {
-            return Err(AnalysisError::NotFinite("a displacement"));
-        }
-        if !self.stresses.iter().all(|stress| stress.share.is_finite()) {
-            return Err(AnalysisError::NotFinite("a stress"));
-        }
+        let modes = &self.modes.list;
+        all(
+            modes.iter().flat_map(|mode| {
+                let shares = mode.shares.into_iter().chain(mode.captured);
+                shares.chain([mode.period, mode.eigenvalue])
+            }),
+            "a period or a share of a mode",
+        )?;
+        all(
+            modes.iter().flat_map(|mode| mode.shape.iter().copied()),
+            "a mode shape",
+        )?;
+        all(
+            self.cases.iter().flat_map(|case| {
+                let drifts = case.storey_drift.iter().chain([&case.top_drift]);
+                drifts.flatten().chain(&case.floors).copied()
+            }),
+            "a displacement",
+        )?;
+        all(
+            self.stresses.iter().flat_map(|stress| {
+                let slopes = stress.share_by_size.iter().copied();
+                slopes.chain([stress.force, stress.stress, stress.share])
+            }),
+            "a stress",
+        )?;
+        all(
+            self.centres.iter().flatten().flat_map(|centres| {
+                let (mass, rigidity) = (centres.mass, centres.rigidity);
+                [mass.x, mass.y, rigidity.x, rigidity.y]
+            }),
+            "a centre of mass or rigidity",
+        )
+    }
+}
+
+fn all(mut numbers: impl Iterator<Item = f64>, what: &'static str) -> Result<(), AnalysisError> {
+    if numbers.all(f64::is_finite) {
         Ok(())
+    } else {
+        Err(AnalysisError::NotFinite(what))
     }
 }

@@ -8,6 +8,8 @@ mod args;
 mod check;
 mod expand;
 mod input;
+mod journal;
+mod lock;
 mod message;
 mod progress;
 mod propose;
