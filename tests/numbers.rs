@@ -116,20 +116,25 @@ impl Reference {
         let factors = tower.cracking.factors(state);
         let count = freedoms.count();
         let mut matrix = vec![vec![ZERO; count]; count];
-        let members = (1..=tower.storey_count())
-            .flat_map(|storey| storey_members(tower, &sizes, storey, factors))
-            .map(|standing| standing.member)
-            .chain(
-                deep_arms(tower, &sizes, factors)
-                    .into_iter()
-                    .map(|(_, arm)| arm.member),
-            );
-        for row in members.flat_map(|member: Member| member.rows::<f64>(&reading)) {
+        // A member counts its levels from the foot of its storey.
+        let mut members: Vec<(usize, Member)> = Vec::new();
+        for storey in 1..=tower.storey_count() {
+            let standing = storey_members(tower, &sizes, storey, factors);
+            members.extend(standing.into_iter().map(|s| (storey - 1, s.member)));
+        }
+        for (storeys, arm) in deep_arms(tower, &sizes, factors) {
+            members.push((storeys.first - 1, arm.member));
+        }
+        let rows = members.iter().flat_map(|(foot, member)| {
+            let rows = member.rows::<f64>(&reading);
+            rows.into_iter().map(move |row| (foot, row))
+        });
+        for (foot, row) in rows {
             let mut terms: Vec<(usize, Twofold)> = Vec::new();
             for (freedom, b) in &row.terms {
-                let start = freedoms.levels[freedom.level].start;
-                for (local, share) in freedoms.locate::<f64>(freedom.level, freedom.kind, &reading)
-                {
+                let level = foot + freedom.level;
+                let start = freedoms.levels[level].start;
+                for (local, share) in freedoms.locate::<f64>(level, freedom.kind, &reading) {
                     terms.push((start + local, Twofold::from(*b) * share.into()));
                 }
             }
@@ -226,7 +231,9 @@ fn errors(tower: &Tower) -> Result<(f64, f64), AnalysisError> {
             } else {
                 scale
             };
-            worst.0 = worst.0.max((u - v.high).abs() / size);
+            let error = (u - v.high).abs() / size;
+            assert!(error.is_finite(), "{error} of {u} beside {v:?}");
+            worst.0 = worst.0.max(error);
         }
     }
     // One step of inverse iteration and a Rayleigh quotient: the error of the
@@ -247,7 +254,9 @@ fn errors(tower: &Tower) -> Result<(f64, f64), AnalysisError> {
         let pushed = weigh(&doubles(&mode.shape));
         let shape = reference.moved(&pushed);
         let eigenvalue = dot(&shape, &pushed) / dot(&shape, &weigh(&shape));
-        worst.1 = worst.1.max(off(mode.eigenvalue, eigenvalue.high));
+        let error = off(mode.eigenvalue, eigenvalue.high);
+        assert!(error.is_finite(), "{error} of {}", mode.eigenvalue);
+        worst.1 = worst.1.max(error);
     }
     Ok(worst)
 }

@@ -464,19 +464,27 @@ fn energy_and_equilibrium_close() {
 
             // What the members carry through a cut under each storey is what acts above.
             let factors = tower.cracking.factors(case.state);
-            let mut members: Vec<Member> = (1..=tower.storey_count())
-                .flat_map(|storey| storey_members(&tower, &sizes, storey, factors))
-                .map(|standing| standing.member)
-                .collect();
+            // A member counts its levels from the foot of its storey.
+            let mut members: Vec<(usize, Member)> = Vec::new();
+            for storey in 1..=tower.storey_count() {
+                let standing = storey_members(&tower, &sizes, storey, factors);
+                members.extend(standing.into_iter().map(|s| (storey - 1, s.member)));
+            }
             members.extend(
                 deep_arms(&tower, &sizes, factors)
                     .into_iter()
-                    .map(|(_, arm)| arm.member),
+                    .map(|(storeys, arm)| (storeys.first - 1, arm.member)),
             );
             let reading = reading(&sizes, &values, &nodes, None);
             let rows: Vec<_> = members
                 .iter()
-                .flat_map(|member| member.rows::<f64>(&reading))
+                .flat_map(|(foot, member)| {
+                    let mut rows = member.rows::<f64>(&reading);
+                    for (freedom, _) in rows.iter_mut().flat_map(|row| &mut row.terms) {
+                        freedom.level += foot;
+                    }
+                    rows
+                })
                 .map(|row| {
                     let strain: f64 = row
                         .terms

@@ -29,6 +29,16 @@ pub enum AnalysisError {
         nearby: String,
         state: &'static str,
     },
+    #[error(
+        "the tower can move almost without resistance: {freedom} ({state}) gives {share:.0e} times as far as the stiffest, beyond what can be told from rounding; there: {nearby}; check that they hold it and are connected and supported below"
+    )]
+    NearMechanism {
+        freedom: String,
+        nearby: String,
+        state: &'static str,
+        /// Largest flexibility over smallest.
+        share: f64,
+    },
     #[error("the modes could not be found: {0}")]
     Modes(#[from] ModesError),
     #[error(
@@ -88,6 +98,9 @@ struct State {
 
 /// Modes looked at beyond those reported, so that captured mass can be reached.
 const MOST_MODES: usize = 60;
+/// Softest over stiffest flexibility beyond which modes that cannot be found are
+/// blamed on it.
+const TOO_SOFT: f64 = 1e8;
 
 impl Analyst {
     /// For the present layout of `tower`.
@@ -175,7 +188,8 @@ impl Analyst {
         let masses = self.mass_model.at(&self.sizes, values);
         let flexibility = &self.states[0].flexibility;
         let count = MOST_MODES.min(self.floor_numbers.len());
-        let pairs = modes_from_flexibility(flexibility, &masses.matrices(), count)?;
+        let pairs = modes_from_flexibility(flexibility, &masses.matrices(), count)
+            .map_err(|error| self.too_soft(&masses).unwrap_or_else(|| error.into()))?;
         let modes = Modes::from_pairs(&pairs, &masses);
 
         let cases: Vec<CaseResponse> = self
@@ -324,6 +338,28 @@ impl Analyst {
         self.probes[case].1[end]
     }
 
+    /// The floor freedom that gives most, where that is so much that the modes
+    /// drown in rounding; flexibilities are weighed by masses, so that metres
+    /// compare with radians.
+    fn too_soft(&self, masses: &Masses) -> Option<AnalysisError> {
+        let state = &self.states[0];
+        let matrices = masses.matrices();
+        let given = |i: usize| state.flexibility.get(i, i) * matrices[i / 3][i % 3][i % 3];
+        let all = 0..self.floor_numbers.len();
+        let softest = all.clone().max_by(|&a, &b| given(a).total_cmp(&given(b)))?;
+        let share = given(softest) / all.map(given).fold(f64::INFINITY, f64::min);
+        if !(share.is_finite() && share > TOO_SOFT) {
+            return None;
+        }
+        let number = self.floor_numbers[softest];
+        Some(AnalysisError::NearMechanism {
+            freedom: self.freedoms.describe(number, &self.tower),
+            nearby: self.freedoms.nearby(number, &self.tower),
+            state: words(state.state),
+            share,
+        })
+    }
+
     fn state(&self, wanted: LimitState) -> &State {
         self.states
             .iter()
@@ -355,10 +391,7 @@ impl State {
             return Err(AnalysisError::Mechanism {
                 freedom: freedoms.describe(failure.index, tower),
                 nearby: freedoms.nearby(failure.index, tower),
-                state: match self.state {
-                    LimitState::Unfactored => "unfactored section properties",
-                    LimitState::Factored => "factored section properties",
-                },
+                state: words(self.state),
             });
         }
         let factor = self.factor.as_ref().expect("just made");
@@ -413,6 +446,13 @@ impl Response {
             }),
             "a centre of mass or rigidity",
         )
+    }
+}
+
+fn words(state: LimitState) -> &'static str {
+    match state {
+        LimitState::Unfactored => "unfactored section properties",
+        LimitState::Factored => "factored section properties",
     }
 }
 

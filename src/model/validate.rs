@@ -838,7 +838,7 @@ fn along_line(p: Point, a: Point, b: Point) -> f64 {
 /// Distance of `p` from the segment from `a` to `b`, m.
 fn from_segment(p: Point, a: Point, b: Point) -> f64 {
     let length = distance(a, b);
-    let along = along_line(p, a, b).clamp(0.0, length) / length;
+    let along = along_line(p, a, b).max(0.0).min(length) / length;
     let foot = Point {
         x: a.x + along * (b.x - a.x),
         y: a.y + along * (b.y - a.y),
