@@ -13,29 +13,42 @@
 
 #![forbid(unsafe_code)]
 
-/// Block-tridiagonal matrices: factor, solve, flexibility, modes. Pure mathematics.
+// Block-tridiagonal matrices: factor, solve, flexibility, modes. Pure mathematics.
 pub mod blocktri;
 
-/// Constrained, modular minimisation. Pure mathematics.
+// Constrained, modular minimisation. Pure mathematics.
 pub mod search;
 
-/// What the engineer states, validated, in SI.
+// Codes of practice as data: limits, factors, tables.
+pub mod codes;
+
+// Wind and earthquake as formulas, with derivatives by period.
+pub mod loads;
+
+// What the engineer states, validated, in SI.
 pub mod model;
 
-/// Members as strain modes: stiffness, concrete, derivatives.
+// Members as strain modes: stiffness, concrete, derivatives.
 pub mod elements;
 
-/// How a tower responds.
+// How a tower responds.
 pub mod analysis;
 
-/// The response against limits.
+// The response against limits.
 pub mod checks;
 
-/// What may vary, and the road from variables to an evaluation.
+// Outrigger and belt places: every set of them, by low-rank updates.
+pub mod placement;
+
+// What may vary, and the road from variables to an evaluation.
 pub mod design;
 
-/// Alternatives: made, searched in parallel, told apart, ranked.
+// Alternatives: made, searched in parallel, told apart, ranked.
 pub mod schemes;
 
-/// Results for people and programs.
+// Results for people and programs.
 pub mod report;
+
+#[cfg(doctest)]
+#[doc = include_str!("../README.md")]
+struct ReadmeExamples;

@@ -251,6 +251,7 @@ fn proposed_schemes_are_files_that_check_confirms() {
         files.push(scheme["file"].as_str().unwrap().to_owned());
     }
     assert_eq!(schemes[0]["feasible"], true);
+    assert_bounded(&report);
     files.extend(["schemes.csv".to_owned(), "schemes.json".to_owned()]);
     files.sort();
     assert_eq!(desk.names("made/here"), files);
@@ -266,6 +267,25 @@ fn proposed_schemes_are_files_that_check_confirms() {
     for (row, scheme) in rows.iter().zip(schemes) {
         let value: f64 = row[added].parse().unwrap();
         assert!((value - scheme["added_concrete_m3"].as_f64().unwrap()).abs() < 1e-6);
+    }
+}
+
+/// A lower bound lies below every scheme that passes, and gaps say by how much.
+fn assert_bounded(report: &Value) {
+    let bound = &report["bound"];
+    assert_eq!(bound["impossible"], false);
+    let least = bound["added_concrete_m3"].as_f64().unwrap();
+    let walls = bound["wall_concrete_m3"].as_f64().unwrap();
+    let of_given = &report["given"]["quantities"]["walls_m3"];
+    assert_eq!(&bound["wall_concrete_m3"], of_given);
+    let schemes = report["schemes"].as_array().unwrap();
+    let gaps = bound["gap_percent"].as_array().unwrap();
+    assert_eq!(gaps.len(), schemes.len());
+    for (scheme, gap) in schemes.iter().zip(gaps) {
+        let added = scheme["added_concrete_m3"].as_f64().unwrap();
+        assert!(added >= least - 1e-6, "{added} lies below {least}");
+        let again = 100.0 * (added - least) / walls;
+        assert!((gap.as_f64().unwrap() - again).abs() < 1e-9);
     }
 }
 

@@ -12,7 +12,7 @@ use super::stiffness::{plan_nodes, reading, seeds};
 use crate::elements::bounds::{Affine, Place, SizeBox, volume_minorant};
 use crate::elements::{Member, Reading};
 use crate::model::sizes::Sizes;
-use crate::model::tower::{Extent, Floor, LimitState, Point, StructureMass, Tower};
+use crate::model::tower::{Extent, Floor, LimitState, Point, StoreyRange, StructureMass, Tower};
 
 /// Mass of one floor about the reference point.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
@@ -28,7 +28,8 @@ pub struct Inertia {
 }
 
 impl Inertia {
-    fn add(&mut self, other: &Inertia, factor: f64) {
+    /// Adds `factor` times another.
+    pub fn add(&mut self, other: &Inertia, factor: f64) {
         self.mass += factor * other.mass;
         self.moment_x += factor * other.moment_x;
         self.moment_y += factor * other.moment_y;
@@ -153,7 +154,7 @@ pub struct Weighed {
 }
 
 /// Floor masses, members' concrete, and derivatives, at the sizes of a tower.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub struct Masses {
     /// One per level from 1 to N.
     pub floors: Vec<Inertia>,
@@ -332,6 +333,25 @@ impl Masses {
         gradient
     }
 
+    /// Sum over `(level index, d inertia / d size)` of what `of` makes of it, for
+    /// every size.
+    pub fn gradient_by_level(&self, of: impl Fn(usize, &Inertia) -> f64) -> Vec<f64> {
+        let mut gradient = vec![0.0; self.size_count];
+        self.each_slope(|level, size, derivative| gradient[size] += of(level, derivative));
+        gradient
+    }
+
+    /// Calls `take` with level index (0 for level 1), size and derivative.
+    pub fn each_slope(&self, mut take: impl FnMut(usize, usize, &Inertia)) {
+        for (level, size, derivative) in &self.by_size {
+            take(*level, *size, derivative);
+        }
+    }
+
+    pub fn size_count(&self) -> usize {
+        self.size_count
+    }
+
     /// Concrete of one kind of member, m3.
     pub fn concrete(&self, part: Part) -> f64 {
         let volume = |piece: &Piece| self.bodies[piece.body].volume;
@@ -360,6 +380,11 @@ impl Masses {
         }
         gradient
     }
+}
+
+/// Levels that carry the mass of arms over `storeys`, each with its share.
+pub fn arm_levels(storeys: StoreyRange) -> [(usize, f64); 2] {
+    [(storeys.first - 1, 0.5), (storeys.last, 0.5)]
 }
 
 /// Area of a floor's extent, m2.
@@ -412,11 +437,7 @@ fn pieces(tower: &Tower, sizes: &Sizes) -> (Vec<Piece>, Vec<Unweighed>) {
         }
     }
     for (storeys, standing) in deep_arms(tower, sizes, factors) {
-        place(
-            standing,
-            storeys.first,
-            [(storeys.first - 1, 0.5), (storeys.last, 0.5)],
-        );
+        place(standing, storeys.first, arm_levels(storeys));
     }
     (pieces, bodies)
 }

@@ -7,7 +7,9 @@ use crate::elements::column::ColumnPiece;
 use crate::elements::link::{LinkBeam, LinkEnd};
 use crate::elements::wall::{Attachment, Edge, Panel};
 use crate::model::sizes::Sizes;
-use crate::model::tower::{ArmSystem, Concrete, Factors, OpenEnd, Point, StoreyRange, Tower, Wall};
+use crate::model::tower::{
+    Arm, ArmSystem, Concrete, Factors, OpenEnd, Point, StoreyRange, Tower, Wall,
+};
 
 /// The tower's own list that a member comes from, with the index in it.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -172,44 +174,54 @@ fn arms(
     wanted: impl Fn(StoreyRange) -> bool,
 ) -> Vec<(StoreyRange, Standing)> {
     let mut found = Vec::new();
-    let mut gather = |system: &ArmSystem, outrigger: bool| {
+    for (system, outriggers) in [(&tower.outriggers, true), (&tower.belts, false)] {
         for (place, at) in system.places.iter().enumerate() {
-            if !at.in_use || !wanted(at.storeys) {
-                continue;
-            }
-            let filled = &tower.storeys[at.storeys.first - 1..at.storeys.last];
-            let concrete: &Concrete = &filled[0].concrete;
-            for (index, arm) in system.arms.iter().enumerate() {
-                let (source, thickness) = if outrigger {
-                    (
-                        Source::Outrigger { place, arm: index },
-                        sizes.outrigger(place),
-                    )
-                } else {
-                    (Source::Belt { place, arm: index }, sizes.belt(place))
-                };
-                let member = Member::Arm(DeepArm {
-                    from: arm.from,
-                    to: arm.to,
-                    thickness,
-                    heights: filled.iter().map(|storey| storey.height).collect(),
-                    bending_modulus: concrete.elastic_modulus * factors.arms,
-                    shear_modulus: concrete.shear_modulus(),
-                });
-                found.push((
-                    at.storeys,
-                    Standing {
-                        source,
-                        member,
-                        density: concrete.density,
-                    },
-                ));
+            if at.in_use && wanted(at.storeys) {
+                let arms = arms_at(tower, sizes, factors, outriggers, place);
+                found.extend(arms.into_iter().map(|arm| (at.storeys, arm)));
             }
         }
-    };
-    gather(&tower.outriggers, true);
-    gather(&tower.belts, false);
+    }
     found
+}
+
+/// Arms of one place, whether in use or not: of the outriggers, or of the belts.
+pub fn arms_at(
+    tower: &Tower,
+    sizes: &Sizes,
+    factors: &Factors,
+    outriggers: bool,
+    place: usize,
+) -> Vec<Standing> {
+    let system: &ArmSystem = if outriggers {
+        &tower.outriggers
+    } else {
+        &tower.belts
+    };
+    let storeys = system.places[place].storeys;
+    let filled = &tower.storeys[storeys.first - 1..storeys.last];
+    let concrete: &Concrete = &filled[0].concrete;
+    let of_arm = |(arm, ends): (usize, &Arm)| {
+        let (source, thickness) = if outriggers {
+            (Source::Outrigger { place, arm }, sizes.outrigger(place))
+        } else {
+            (Source::Belt { place, arm }, sizes.belt(place))
+        };
+        let member = Member::Arm(DeepArm {
+            from: ends.from,
+            to: ends.to,
+            thickness,
+            heights: filled.iter().map(|storey| storey.height).collect(),
+            bending_modulus: concrete.elastic_modulus * factors.arms,
+            shear_modulus: concrete.shear_modulus(),
+        });
+        Standing {
+            source,
+            member,
+            density: concrete.density,
+        }
+    };
+    system.arms.iter().enumerate().map(of_arm).collect()
 }
 
 fn direction(from: Point, to: Point) -> (f64, f64) {

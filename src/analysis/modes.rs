@@ -9,7 +9,7 @@
 //! 0.8. Where plan axes and principal directions differ, X and Y here are the two
 //! principal directions, and [`Modes::principal_angle`] says so.
 
-use super::inertia::Masses;
+use super::inertia::{Inertia, Masses};
 use crate::blocktri::{Dense, Factor, FloorModes};
 
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -46,7 +46,7 @@ pub struct Mode {
     pub captured: [f64; 3],
 }
 
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub struct Modes {
     /// Longest period first.
     pub list: Vec<Mode>,
@@ -75,8 +75,8 @@ impl Modes {
         let mut shapes: Vec<Vec<f64>> = (0..eigenvalues.len())
             .map(|mode| pairs.shapes.col(mode).to_vec())
             .collect();
-        turn_clusters_to_axes(eigenvalues, &mut shapes, masses);
-        let principal_angle = principal_angle(eigenvalues, &shapes, masses);
+        turn_clusters_to_axes(eigenvalues, &mut shapes, &masses.floors);
+        let principal_angle = principal_angle(eigenvalues, &shapes, &masses.floors);
 
         let mut list: Vec<Mode> = Vec::new();
         let mut sums = [0.0_f64; 3];
@@ -85,9 +85,9 @@ impl Modes {
             if list.len() >= FEWEST && enough {
                 break;
             }
-            let shares = shares(&shape, masses, principal_angle);
+            let shares = shares(&shape, &masses.floors, principal_angle);
             let class = class_of(shares);
-            let captured = captured(&shape, masses, principal_angle);
+            let captured = captured(&shape, &masses.floors, principal_angle);
             for (sum, part) in sums.iter_mut().zip(captured) {
                 *sum += part;
             }
@@ -118,6 +118,35 @@ impl Modes {
     }
 }
 
+/// Eigenvalue and twist share of the first mode of each class, in the order X, Y,
+/// twist, read off `eigenvalues` and `shapes` as [`Modes::from_pairs`] does. `None`
+/// where a class is missing, or may have its first mode in a cluster that goes
+/// on beyond the last shape.
+pub fn first_of_each(
+    eigenvalues: &[f64],
+    mut shapes: Vec<Vec<f64>>,
+    floors: &[Inertia],
+) -> [Option<(f64, f64)>; 3] {
+    turn_clusters_to_axes(eigenvalues, &mut shapes, floors);
+    let angle = principal_angle(eigenvalues, &shapes, floors);
+    let mut first = [None; 3];
+    for (&eigenvalue, shape) in eigenvalues.iter().zip(&shapes) {
+        let shares = shares(shape, floors, angle);
+        let class = class_of(shares) as usize;
+        first[class].get_or_insert((eigenvalue, shares[2]));
+        if first.iter().all(Option::is_some) {
+            break;
+        }
+    }
+    first
+}
+
+/// Kinetic-energy shares along X, along Y and in twist, and the class they make.
+pub fn class_of_shape(shape: &[f64], floors: &[Inertia]) -> ([f64; 3], Class) {
+    let shares = shares(shape, floors, 0.0);
+    (shares, class_of(shares))
+}
+
 /// Shape over all freedoms: `phi = lambda K^-1 E M phi_floor`.
 /// `floors` are the global numbers of the floor freedoms; `count` of all.
 pub fn full_shapes(
@@ -127,13 +156,28 @@ pub fn full_shapes(
     floors: &[usize],
     count: usize,
 ) -> Dense {
-    let mut shapes = Dense::zeros(count, modes.len());
-    for (column, mode) in modes.iter().enumerate() {
+    let eigenvalues: Vec<f64> = modes.iter().map(|mode| mode.eigenvalue).collect();
+    let shapes: Vec<&[f64]> = modes.iter().map(|mode| mode.shape.as_slice()).collect();
+    full_shapes_of(&eigenvalues, &shapes, masses, factor, floors, count)
+}
+
+/// As [`full_shapes`], of plain eigenpairs.
+pub fn full_shapes_of(
+    eigenvalues: &[f64],
+    of_floors: &[impl AsRef<[f64]>],
+    masses: &Masses,
+    factor: &Factor,
+    floors: &[usize],
+    count: usize,
+) -> Dense {
+    let mut shapes = Dense::zeros(count, of_floors.len());
+    for (column, (&eigenvalue, shape)) in eigenvalues.iter().zip(of_floors).enumerate() {
         let target = shapes.col_mut(column);
+        let shape = shape.as_ref();
         for (level, matrix) in masses.matrices().iter().enumerate() {
             for (i, row) in matrix.iter().enumerate() {
-                let sum: f64 = (0..3).map(|j| row[j] * mode.shape[3 * level + j]).sum();
-                target[floors[3 * level + i]] = mode.eigenvalue * sum;
+                let sum: f64 = (0..3).map(|j| row[j] * shape[3 * level + j]).sum();
+                target[floors[3 * level + i]] = eigenvalue * sum;
             }
         }
     }
@@ -142,16 +186,16 @@ pub fn full_shapes(
 }
 
 /// Motion of a floor's centre of mass, turned by `angle`, and its twist.
-fn at_centre(floor: &super::inertia::Inertia, u: &[f64], angle: f64) -> [f64; 3] {
+fn at_centre(floor: &Inertia, u: &[f64], angle: f64) -> [f64; 3] {
     let centre = floor.centre();
     let (x, y) = (u[0] - u[2] * centre.y, u[1] + u[2] * centre.x);
     let (sin, cos) = angle.sin_cos();
     [cos * x + sin * y, -sin * x + cos * y, u[2]]
 }
 
-fn shares(shape: &[f64], masses: &Masses, angle: f64) -> [f64; 3] {
+fn shares(shape: &[f64], floors: &[Inertia], angle: f64) -> [f64; 3] {
     let mut energy = [0.0; 3];
-    for (floor, u) in masses.floors.iter().zip(shape.chunks_exact(3)) {
+    for (floor, u) in floors.iter().zip(shape.chunks_exact(3)) {
         let motion = at_centre(floor, u, angle);
         energy[0] += floor.mass * motion[0].powi(2);
         energy[1] += floor.mass * motion[1].powi(2);
@@ -171,10 +215,10 @@ fn class_of(shares: [f64; 3]) -> Class {
     }
 }
 
-fn captured(shape: &[f64], masses: &Masses, angle: f64) -> [f64; 3] {
+fn captured(shape: &[f64], floors: &[Inertia], angle: f64) -> [f64; 3] {
     let mut participation = [0.0; 3];
     let mut total = [0.0; 3];
-    for (floor, u) in masses.floors.iter().zip(shape.chunks_exact(3)) {
+    for (floor, u) in floors.iter().zip(shape.chunks_exact(3)) {
         let motion = at_centre(floor, u, angle);
         let weights = [floor.mass, floor.mass, floor.central()];
         for i in 0..3 {
@@ -188,7 +232,7 @@ fn captured(shape: &[f64], masses: &Masses, angle: f64) -> [f64; 3] {
 /// Shapes within a cluster of equal eigenvalues are any basis of their space;
 /// this one separates twist from sway and sway in X from sway in Y, by the
 /// eigenvectors of the X-energy (then of the twist-energy) within the cluster.
-fn turn_clusters_to_axes(eigenvalues: &[f64], shapes: &mut [Vec<f64>], masses: &Masses) {
+fn turn_clusters_to_axes(eigenvalues: &[f64], shapes: &mut [Vec<f64>], floors: &[Inertia]) {
     let mut start = 0;
     while start < eigenvalues.len() {
         let mut end = start + 1;
@@ -198,19 +242,18 @@ fn turn_clusters_to_axes(eigenvalues: &[f64], shapes: &mut [Vec<f64>], masses: &
             end += 1;
         }
         if end - start > 1 {
-            turn_cluster(&mut shapes[start..end], masses);
+            turn_cluster(&mut shapes[start..end], floors);
         }
         start = end;
     }
 }
 
-fn turn_cluster(shapes: &mut [Vec<f64>], masses: &Masses) {
+fn turn_cluster(shapes: &mut [Vec<f64>], floors: &[Inertia]) {
     let size = shapes.len();
     // Distinct weights make the three kinds of motion distinct eigenvalues.
     let weight = [2.0, 1.0, 0.0];
     let energy = nalgebra::DMatrix::from_fn(size, size, |i, j| {
-        masses
-            .floors
+        floors
             .iter()
             .zip(shapes[i].chunks_exact(3).zip(shapes[j].chunks_exact(3)))
             .map(|(floor, (u, v))| {
@@ -245,9 +288,9 @@ fn turn_cluster(shapes: &mut [Vec<f64>], masses: &Masses) {
 /// Direction of the slowest mode that mainly sways, from the plan's X axis,
 /// between -45 and 45 degrees. Zero when it lies along an axis or when the next
 /// sway is so close that directions mean nothing.
-fn principal_angle(eigenvalues: &[f64], shapes: &[Vec<f64>], masses: &Masses) -> f64 {
+fn principal_angle(eigenvalues: &[f64], shapes: &[Vec<f64>], floors: &[Inertia]) -> f64 {
     let sways: Vec<usize> = (0..shapes.len())
-        .filter(|&mode| shares(&shapes[mode], masses, 0.0)[2] < 0.5)
+        .filter(|&mode| shares(&shapes[mode], floors, 0.0)[2] < 0.5)
         .collect();
     let Some(&first) = sways.first() else {
         return 0.0;
@@ -259,7 +302,7 @@ fn principal_angle(eigenvalues: &[f64], shapes: &[Vec<f64>], masses: &Masses) ->
         return 0.0;
     }
     let (mut xx, mut yy, mut xy) = (0.0, 0.0, 0.0);
-    for (floor, u) in masses.floors.iter().zip(shapes[first].chunks_exact(3)) {
+    for (floor, u) in floors.iter().zip(shapes[first].chunks_exact(3)) {
         let [x, y, _] = at_centre(floor, u, 0.0);
         xx += floor.mass * x * x;
         yy += floor.mass * y * y;

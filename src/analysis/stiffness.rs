@@ -388,7 +388,7 @@ impl Kind {
 }
 
 /// The terms of `row` by number within the strip.
-fn located<D: Scalar>(
+pub(super) fn located<D: Scalar>(
     row: &Row<D>,
     lowest: usize,
     levels: &[Level],

@@ -69,6 +69,9 @@ pub fn checks(tower: &Tower, response: &Response) -> Result<Vec<Check>, Analysis
     checks.extend(drift::checks(tower, response));
     checks.extend(stress::checks(tower, response));
     checks.extend(zones::checks(tower));
+    if checks.iter().any(|check| !check.demand.is_finite()) {
+        return Err(AnalysisError::NotFinite("what a check is held against"));
+    }
     Ok(checks)
 }
 
@@ -89,11 +92,12 @@ pub fn all_pass(checks: &[Check]) -> bool {
     checks.iter().all(|check| check.passes || check.off)
 }
 
-/// The check with the highest utilisation among those not switched off.
+/// The check with the highest utilisation among those not switched off. Rules
+/// between zones are kept to the limit by intent, and govern only when broken.
 pub fn governing(checks: &[Check]) -> Option<&Check> {
     checks
         .iter()
-        .filter(|check| !check.off)
+        .filter(|check| !check.off && (check.unit != zones::UNIT || !check.passes))
         .max_by(|a, b| a.utilisation.total_cmp(&b.utilisation))
 }
 

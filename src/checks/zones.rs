@@ -4,6 +4,9 @@
 use super::Check;
 use crate::model::tower::{SizeZone, Tower};
 
+/// Unit of these rules, and of no other check.
+pub const UNIT: &str = "mm";
+
 /// Slack for sizes that are equal but for rounding, m.
 const ROUNDING: f64 = 1e-9;
 
@@ -37,25 +40,29 @@ pub fn checks(tower: &Tower) -> Vec<Check> {
         }
     }
     let millimetres = |length: f64| (length * 1e6).round() / 1e3;
-    let row = |name: &str, demand: f64, limit: f64, place: String| Check {
-        name: name.into(),
-        clause: "tower file".into(),
-        source: "stated in the tower file".into(),
-        demand: millimetres(demand),
-        limit: millimetres(limit),
-        unit: "mm",
-        utilisation: if limit > 0.0 {
-            demand / limit
-        } else {
-            f64::from(u8::from(demand > 0.0))
-        },
-        passes: demand <= limit + ROUNDING,
-        off: false,
-        place: if place.is_empty() {
-            "everywhere".into()
-        } else {
-            place
-        },
+    let row = |name: &str, demand: f64, limit: f64, place: String| {
+        // Judged as shown, so that rounding of sums never decides.
+        let (demand, limit) = (millimetres(demand), millimetres(limit));
+        Check {
+            name: name.into(),
+            clause: "tower file".into(),
+            source: "stated in the tower file".into(),
+            demand,
+            limit,
+            unit: UNIT,
+            utilisation: if limit > 0.0 {
+                demand / limit
+            } else {
+                f64::from(u8::from(demand > 0.0))
+            },
+            passes: demand <= limit,
+            off: false,
+            place: if place.is_empty() {
+                "everywhere".into()
+            } else {
+                place
+            },
+        }
     };
     let mut checks = Vec::new();
     if any.0 {

@@ -2,7 +2,8 @@
 
 use std::path::PathBuf;
 
-use clap::{Args, Parser, Subcommand};
+use clap::{Args, Parser, Subcommand, ValueEnum};
+use corewright::placement::field::MOST_LEVELS;
 use corewright::report::folder::MOST_SCHEMES;
 use corewright::schemes::run::Settings;
 
@@ -38,6 +39,9 @@ pub enum Command {
     /// Search for changes that meet every check, and write them as schemes
     #[command(after_help = EXIT_CODES)]
     Propose(ProposeArguments),
+    /// Map every set of one to four outrigger or belt places, by each quantity
+    #[command(after_help = EXIT_CODES)]
+    Outriggers(OutriggersArguments),
     /// Print a tower file in full: every node, member and default spelt out
     #[command(after_help = EXIT_CODES)]
     Expand(ExpandArguments),
@@ -83,6 +87,57 @@ pub struct ProposeArguments {
     /// Stop after so many seconds with what is found; may change the answer from run to run
     #[arg(long, value_name = "SECONDS", value_parser = seconds)]
     pub time_limit: Option<f64>,
+}
+
+#[derive(Debug, Args)]
+pub struct OutriggersArguments {
+    /// Tower file (TOML); "-" reads standard input
+    pub file: PathBuf,
+    /// Most places in a set
+    #[arg(long, value_name = "1..4", default_value_t = 3, value_parser = count(MOST_LEVELS))]
+    pub levels: usize,
+    /// Look at every run of storeys as long as one of the stated places, not at those alone
+    #[arg(long)]
+    pub all_storeys: bool,
+    /// What stands at a place [default: outriggers, or belts where there are no outriggers]
+    #[arg(long, value_enum)]
+    pub arms: Option<ArmsWanted>,
+    /// Give each set the least thickness that meets the limits of periods, ratio and drifts
+    #[arg(long)]
+    pub least_thickness: bool,
+    /// Maps of pairs to draw in the text
+    #[arg(long, value_enum, default_value_t = MapsWanted::Usual)]
+    pub maps: MapsWanted,
+    /// Write JSON instead of text
+    #[arg(long)]
+    pub json: bool,
+    /// Folder for outriggers.json and a CSV file of the sets of each size; made when missing
+    #[arg(long, value_name = "DIR")]
+    pub out: Option<PathBuf>,
+    /// Threads to use [default: all cores]; changes nothing in the answer
+    #[arg(long, value_name = "N", value_parser = count(1024))]
+    pub threads: Option<usize>,
+}
+
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub enum ArmsWanted {
+    /// Arms from the core to columns
+    Outriggers,
+    /// Arms along the facade
+    Belts,
+    /// Outriggers and belts together at each place
+    Both,
+    /// Places of either, mixed freely
+    Each,
+}
+
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub enum MapsWanted {
+    /// The longer period, the torsional ratio, and top drifts
+    Usual,
+    /// Everything that moves
+    All,
+    None,
 }
 
 #[derive(Debug, Args)]

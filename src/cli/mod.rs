@@ -11,6 +11,7 @@ mod input;
 mod journal;
 mod lock;
 mod message;
+mod outriggers;
 mod progress;
 mod propose;
 mod signals;
@@ -35,6 +36,7 @@ pub fn run() -> ExitCode {
     let answer = match &arguments.command {
         Command::Check(typed) => check::run(typed),
         Command::Propose(typed) => propose::run(typed, arguments.quiet),
+        Command::Outriggers(typed) => outriggers::run(typed),
         Command::Expand(typed) => expand::run(typed),
     };
     match answer {

@@ -52,7 +52,7 @@ pub fn run(typed: &ProposeArguments, quiet: bool) -> Result<Answer, Failure> {
         origin: input.origin(),
         settings,
         time_limit_s: typed.time_limit,
-        interrupted: stop.interrupted(),
+        stopped_by: stop.cause(),
         warnings: input.file.warnings.clone(),
     };
     let report = write_folder(&typed.out, &proposal, circumstances)

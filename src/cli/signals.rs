@@ -4,6 +4,8 @@ use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, AtomicUsize, Ordering};
 use std::time::{Duration, Instant};
 
+use corewright::report::folder::StoppedBy;
+
 use super::message::{Failure, say};
 
 /// Whether to go on. Once it says stop it keeps to it.
@@ -40,6 +42,16 @@ impl Stop {
 
     pub fn interrupted(&self) -> bool {
         self.interrupts.load(Ordering::Relaxed) > 0
+    }
+
+    /// What made the search stop, when something did.
+    pub fn cause(&self) -> Option<StoppedBy> {
+        if self.interrupted() {
+            Some(StoppedBy::Person)
+        } else {
+            let late = self.late.load(Ordering::Relaxed);
+            late.then_some(StoppedBy::TimeLimit)
+        }
     }
 
     pub fn raised(&self) -> bool {

@@ -9,6 +9,6 @@ pub const CAUTIONS: [&str; 4] = [
      storey forces given, and the design of members (reinforcement, connections, foundations).",
     "Limits, factors and clauses marked \"from memory\" are to be verified against the standard \
      before anyone relies on them.",
-    "A search looks at many designs but proves nothing: a cheaper scheme may exist, and \
-     \"nothing found\" is not \"impossible\".",
+    "A search looks at many designs, not at all: a cheaper scheme may exist down to the lower \
+     bound, where one is stated, and \"nothing found\" alone does not mean \"impossible\".",
 ];

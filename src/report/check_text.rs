@@ -154,26 +154,27 @@ fn ratios(results: &Results) -> String {
     )
 }
 
-/// Checks in the order given, with a letter for where each limit comes from.
-pub(super) fn checks(checks: &[&CheckSummary]) -> String {
+/// Checks in the order given, with a letter for the clause of each limit and for
+/// how the limit is known.
+fn checks(checks: &[&CheckSummary]) -> String {
     let mut table = table(&[
         ("check", Column::Title),
         ("demand", Column::Number),
-        ("limit", Column::Text),
+        ("limit", Column::Title),
         ("used", Column::Number),
         ("verdict", Column::Text),
-        ("clause", Column::Text),
         ("where", Column::Text),
         ("limit from", Column::Text),
     ]);
-    let mut sources: Vec<&str> = Vec::new();
+    let mut sources: Vec<String> = Vec::new();
     for check in checks {
         let (demand, limit) = against(check.demand, check.limit, check.unit);
+        let source = format!("{}; {}", check.clause, check.source);
         let source = sources
             .iter()
-            .position(|known| *known == check.source)
+            .position(|known| *known == source)
             .unwrap_or_else(|| {
-                sources.push(&check.source);
+                sources.push(source);
                 sources.len() - 1
             });
         table.add_row([
@@ -182,7 +183,6 @@ pub(super) fn checks(checks: &[&CheckSummary]) -> String {
             format!("{limit} {}", unit_beside(check.unit)),
             utilisation(check.utilisation),
             verdict(check).to_owned(),
-            check.clause.clone(),
             check.place.clone(),
             letter(source),
         ]);

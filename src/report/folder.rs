@@ -48,14 +48,21 @@ pub enum FolderError {
     Analysis(#[from] AnalysisError),
 }
 
+/// What may stop a search from outside.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum StoppedBy {
+    Person,
+    TimeLimit,
+}
+
 /// What the report needs besides the proposal itself.
 #[derive(Debug, Clone)]
 pub struct Circumstances {
     pub origin: Origin,
     pub settings: Settings,
     pub time_limit_s: Option<f64>,
-    /// A person interrupted the run (as against a limit in time).
-    pub interrupted: bool,
+    /// What stopped the search, when something did.
+    pub stopped_by: Option<StoppedBy>,
     pub warnings: Vec<String>,
 }
 
@@ -204,17 +211,25 @@ fn report(
     let schemes = staged
         .iter()
         .enumerate()
-        .map(|(index, staged)| summary(index + 1, staged, &proposal.given, &given.results))
+        .map(|(index, staged)| summary(index + 1, staged, proposal, &given.results))
         .collect::<Result<Vec<_>, _>>()?;
-    let ended = match proposal.ended {
-        Ended::Finished => "finished",
-        Ended::OutOfAnalyses => "out of analyses",
-        Ended::Stopped if circumstances.interrupted => "interrupted",
-        Ended::Stopped => "time limit",
+    let ended = match (circumstances.stopped_by, proposal.ended) {
+        (Some(StoppedBy::Person), _) => "interrupted",
+        (Some(StoppedBy::TimeLimit), _) => "time limit",
+        (None, Ended::Stopped) => "stopped",
+        (None, Ended::OutOfAnalyses) => "out of analyses",
+        (None, Ended::Finished) => "finished",
     };
+    let finished = ended == "finished";
+    let searched_in_vain = finished && !proposal.feasible() && !schemes.is_empty();
+    let bound = proposal
+        .bound
+        .as_ref()
+        .map(|bound| BoundSummary::of(bound, &schemes));
+    let ruled_out = bound.as_ref().is_some_and(|bound| bound.impossible);
     let status = if schemes.iter().any(|scheme| scheme.feasible) {
         Status::Feasible
-    } else if proposal.ended == Ended::Finished && !proposal.feasible() && !schemes.is_empty() {
+    } else if searched_in_vain || ruled_out {
         Status::Infeasible
     } else {
         Status::Undecided
@@ -222,17 +237,19 @@ fn report(
     Ok(ProposalReport {
         tower: TowerSummary::of(&proposal.given.tower),
         status,
-        verdict: verdict(status, ended, &schemes),
+        verdict: verdict(status, ended, &schemes, bound.as_ref()),
+        bound,
         ended,
         settings: SettingSummary::of(&circumstances.settings, circumstances.time_limit_s),
         coverage: CoverageSummary::of(&proposal.coverage),
-        bound: proposal
-            .bound
-            .as_ref()
-            .map(|bound| BoundSummary::of(bound, &schemes)),
         given,
         schemes,
-        conflict: proposal.conflict.as_ref().map(ConflictSummary::of),
+        // A diagnosis that was cut short finds conflicts where there are none.
+        conflict: proposal
+            .conflict
+            .as_ref()
+            .filter(|_| finished)
+            .map(ConflictSummary::of),
         warnings: circumstances.warnings,
         cautions: CAUTIONS.to_vec(),
         origin: circumstances.origin,
@@ -242,8 +259,8 @@ fn report(
 fn summary(
     rank: usize,
     staged: &Staged,
-    given: &Scheme,
-    given_results: &Results,
+    proposal: &Proposal,
+    given: &Results,
 ) -> Result<SchemeSummary, AnalysisError> {
     let scheme = &staged.scheme;
     let results = Results::of(&scheme.response, &scheme.checks)?;
@@ -255,9 +272,9 @@ fn summary(
         feasible: scheme.feasible,
         note: staged.note.clone(),
         added_concrete_m3: scheme.added_concrete,
-        floor_area_lost_m2: scheme.quantities.wall_area - given.quantities.wall_area,
+        floor_area_lost_m2: scheme.quantities.wall_area - proposal.given.quantities.wall_area,
         ideas: scheme.ideas.iter().cloned().collect(),
-        why: words::why(given_results, &results, &changes),
+        why: words::why(given, &results, &changes),
         changes,
         results,
         quantities: QuantitySummary::of(&scheme.quantities, &scheme.response.masses),

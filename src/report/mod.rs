@@ -12,6 +12,8 @@ pub mod cautions;
 pub mod check_text;
 pub mod folder;
 pub mod numbers;
+pub mod placement_summary;
+pub mod placement_text;
 pub mod proposal_text;
 pub mod summary;
 mod tables;

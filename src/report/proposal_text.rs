@@ -48,7 +48,12 @@ pub fn proposal_text(report: &ProposalReport, folder: &str) -> String {
 }
 
 /// The answer in a sentence; `ended` as in the report.
-pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String {
+pub fn verdict(
+    status: Status,
+    ended: &str,
+    schemes: &[SchemeSummary],
+    bound: Option<&BoundSummary>,
+) -> String {
     let passing = schemes.iter().filter(|scheme| scheme.feasible).count();
     let early = match ended {
         "finished" => String::new(),
@@ -88,6 +93,10 @@ pub fn verdict(status: Status, ended: &str, schemes: &[SchemeSummary]) -> String
                 signed_amount(least)
             )
         }
+        Status::Infeasible if bound.is_some_and(|bound| bound.impossible) => format!(
+            "NOT POSSIBLE: a lower bound shows that no design of this space passes every check.{}",
+            nearest()
+        ),
         Status::Infeasible => format!(
             "NOT FOUND: nothing passes every check, {}.{}",
             words::NOT_PROVEN,
@@ -174,7 +183,7 @@ fn comparison(report: &ProposalReport) -> String {
         ("Ty s", number),
         ("Ttwist s", number),
         ("ratio", number),
-        ("governed by", Column::Title),
+        ("governed by", Column::Text),
         ("used", number),
         ("steps", number),
         ("floor m2", number),

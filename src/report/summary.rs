@@ -295,7 +295,7 @@ impl CheckReport {
             Status::Infeasible
         };
         let centres = response.centres.iter().flatten().enumerate();
-        let cases = tower.lateral_cases.iter().zip(&response.cases);
+        let cases = response.cases.iter();
         Ok(CheckReport {
             origin,
             tower: TowerSummary::of(tower),
@@ -312,8 +312,8 @@ impl CheckReport {
                 })
                 .collect(),
             cases: cases
-                .map(|(case, moved)| CaseSummary {
-                    name: case.name.clone(),
+                .map(|moved| CaseSummary {
+                    name: moved.name.clone(),
                     storey_drift: moved.storey_drift.clone(),
                     top_drift: moved.top_drift,
                 })
@@ -334,7 +334,8 @@ pub struct ProposalReport {
     pub status: Status,
     /// The answer in a sentence.
     pub verdict: String,
-    /// Why the search ended: "finished", "interrupted", "time limit" or "out of analyses".
+    /// Why the search ended: "finished", "interrupted", "time limit", "stopped"
+    /// (by a caller of the library) or "out of analyses".
     pub ended: &'static str,
     pub settings: SettingSummary,
     pub coverage: CoverageSummary,

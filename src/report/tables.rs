@@ -13,6 +13,7 @@ pub enum Column {
     Text,
     /// Text that is not broken into lines.
     Title,
+    /// Set to the right, never broken.
     Number,
 }
 
@@ -32,7 +33,7 @@ pub fn table(heads: &[(&str, Column)]) -> Table {
             Column::Text | Column::Title => CellAlignment::Left,
             Column::Number => CellAlignment::Right,
         });
-        if *column == Column::Title {
+        if *column != Column::Text {
             column_of_table.set_constraint(ColumnConstraint::ContentWidth);
         }
     }
