@@ -109,8 +109,8 @@ impl Journal {
             file.seek(SeekFrom::End(0)).map_err(fault)?;
         }
         let head = Head {
-            program: origin.program.to_owned(),
-            version: origin.version.to_owned(),
+            program: origin.program.to_string(),
+            version: origin.version.to_string(),
             input_sha256: origin.input_sha256.clone(),
             seed: settings.seed,
             schemes: settings.schemes,
