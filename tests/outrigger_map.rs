@@ -449,3 +449,17 @@ fn a_search_starts_from_the_best_places() {
     }
     assert_eq!(starts, best_placed(&tower));
 }
+
+#[test]
+fn the_map_is_first_order_and_says_so() {
+    let mut tower = lopsided(10);
+    tower.outriggers.places = vec![free_place(5, 5, 0.5)];
+    tower.outriggers.max_places = 1;
+    let plain = chart(&tower, &choice(Arms::Outriggers, false, 1)).expect("a map");
+    assert!(plain.field.left_out.is_empty());
+    tower.actions.p_delta = true;
+    let map = chart(&tower, &choice(Arms::Outriggers, false, 1)).expect("a map");
+    assert_eq!(map.by_size, plain.by_size);
+    assert!(map.field.left_out[0].contains("P-delta"));
+    against_full_analyses(&map);
+}

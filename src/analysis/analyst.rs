@@ -541,59 +541,6 @@ impl Analyst {
             .collect()
     }
 
-    /// Full shapes of modes of the last analysis, one column each, `phi' M phi = 1`.
-    pub fn mode_shapes(&self, masses: &Masses, modes: &[&Mode]) -> Dense {
-        let factor = self.states[0]
-            .factor
-            .as_ref()
-            .expect("shapes follow an analysis");
-        full_shapes(
-            modes,
-            masses,
-            factor,
-            &self.floor_numbers,
-            self.freedoms.count(),
-        )
-    }
-
-    /// Displacements over all freedoms under a lateral case, at the sizes
-    /// analysed last.
-    pub fn case_displacements(&self, case: usize) -> Vec<f64> {
-        let state = self.state(self.tower.lateral_cases[case].state);
-        let factor = state
-            .factor
-            .as_ref()
-            .expect("displacements follow an analysis");
-        displacements(
-            factor,
-            &self.freedoms,
-            &self.floor_numbers,
-            &[&self.last().forces[case]],
-        )
-        .col(0)
-        .to_vec()
-    }
-
-    /// Forces of a lateral case on the floor freedoms of levels 1 to N.
-    pub fn case_forces(&self, case: usize) -> &[f64] {
-        &self.last().forces[case]
-    }
-
-    /// Stiffness of a limit state in use.
-    pub fn stiffness(&self, wanted: LimitState) -> &Stiffness {
-        &self.state(wanted).stiffness
-    }
-
-    /// Affine bounds of piers under gravity, over the box of `minorants`.
-    pub fn pier_bounds(&self, minorants: &VolumeMinorants) -> Vec<PierBounds> {
-        self.gravity
-            .pier_bounds(&self.tower, &self.sizes, &self.mass_model, minorants)
-    }
-
-    pub fn mass_model(&self) -> &MassModel {
-        &self.mass_model
-    }
-
     fn shaken_gradients(&self, by: &Shaken, state: &State, probes: &[DriftProbe]) -> Vec<Vec<f64>> {
         let last = self.last();
         let count = self.tower.storey_count();
@@ -882,6 +829,62 @@ impl Analyst {
             *slope -= share * of_load;
         }
         gradient
+    }
+
+    /// Full shapes of modes of the last analysis, one column each, `phi' M phi = 1`.
+    pub fn mode_shapes(&self, masses: &Masses, modes: &[&Mode]) -> Dense {
+        let factor = self.states[0]
+            .factor
+            .as_ref()
+            .expect("shapes follow an analysis");
+        full_shapes(
+            modes,
+            masses,
+            factor,
+            &self.floor_numbers,
+            self.freedoms.count(),
+        )
+    }
+
+    /// Displacements over all freedoms under a lateral case, at the sizes
+    /// analysed last.
+    pub fn case_displacements(&self, case: usize) -> Vec<f64> {
+        let state = self.state(self.cases[case].state);
+        let factor = state
+            .factor
+            .as_ref()
+            .expect("displacements follow an analysis");
+        displacements(
+            factor,
+            &self.freedoms,
+            &self.floor_numbers,
+            &[self.case_forces(case)],
+        )
+        .col(0)
+        .to_vec()
+    }
+
+    /// Forces of a lateral case of the tower on the floor freedoms of levels 1 to N.
+    pub fn case_forces(&self, case: usize) -> &[f64] {
+        match &self.cases[case].kind {
+            CaseKind::Fixed(forces) => forces,
+            _ => &self.last().forces[case],
+        }
+    }
+
+    /// Stiffness of a limit state in use.
+    pub fn stiffness(&self, wanted: LimitState) -> &Stiffness {
+        &self.state(wanted).stiffness
+    }
+
+    /// Affine bounds of piers under gravity, over the box of `minorants`.
+    pub fn pier_bounds(&self, minorants: &VolumeMinorants) -> Vec<PierBounds> {
+        self.gravity
+            .pier_bounds(&self.tower, &self.sizes, &self.mass_model, minorants)
+    }
+
+    pub fn mass_model(&self) -> &MassModel {
+        &self.mass_model
     }
 
     /// Probe of a storey's drift (storey from 1) at one end of its floor.

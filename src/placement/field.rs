@@ -9,7 +9,7 @@ use crate::analysis::members::{arms_at, walls_in};
 use crate::analysis::stiffness::{plan_nodes, reading};
 use crate::elements::{Member, Row};
 use crate::model::sizes::Sizes;
-use crate::model::tower::{ArmPlace, ArmSystem, StoreyRange, StructureMass, Tower};
+use crate::model::tower::{Actions, ArmPlace, ArmSystem, StoreyRange, StructureMass, Tower};
 
 /// Most places in a set.
 pub const MOST_LEVELS: usize = 4;
@@ -146,6 +146,17 @@ impl Field {
         }
         let mut base = tower.clone();
         let mut left_out = Vec::new();
+        // Forces that follow from mass and period, and second order, are not
+        // linear in the added rows.
+        if base.actions != Actions::default() {
+            base.actions = Actions::default();
+            left_out.push(
+                "the map takes the storey forces stated in the tower file, first order: wind and \
+                 earthquake worked out from a code, and P-delta, are left aside; check the set \
+                 you choose"
+                    .to_owned(),
+            );
+        }
         if choice.all_storeys {
             let depths: BTreeSet<usize> = [
                 (choice.arms.outriggers(), &tower.outriggers),

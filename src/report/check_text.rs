@@ -125,8 +125,8 @@ fn modes(results: &Results) -> String {
     text
 }
 
-fn class(mode: &ModeSummary) -> &'static str {
-    match mode.class {
+fn class(mode: &ModeSummary) -> &str {
+    match mode.class.as_ref() {
         "x" => "X",
         "y" => "Y",
         other => other,
@@ -168,7 +168,7 @@ fn checks(checks: &[&CheckSummary]) -> String {
     ]);
     let mut sources: Vec<String> = Vec::new();
     for check in checks {
-        let (demand, limit) = against(check.demand, check.limit, check.unit);
+        let (demand, limit) = against(check.demand, check.limit, &check.unit);
         let source = format!("{}; {}", check.clause, check.source);
         let source = sources
             .iter()
@@ -180,7 +180,7 @@ fn checks(checks: &[&CheckSummary]) -> String {
         table.add_row([
             check.name.clone(),
             demand,
-            format!("{limit} {}", unit_beside(check.unit)),
+            format!("{limit} {}", unit_beside(&check.unit)),
             utilisation(check.utilisation),
             verdict(check).to_owned(),
             check.place.clone(),
@@ -215,12 +215,12 @@ fn letter(index: usize) -> String {
 }
 
 fn centres(text: &mut String, report: &CheckReport) {
-    let (Some(last), count) = (report.centres.last(), report.centres.len()) else {
+    let (Some(last), count) = (report.detail.centres.last(), report.detail.centres.len()) else {
         return;
     };
-    let mut shown = vec![&report.centres[0]];
+    let mut shown = vec![&report.detail.centres[0]];
     if count > 2 {
-        shown.push(&report.centres[(count - 1) / 2]);
+        shown.push(&report.detail.centres[(count - 1) / 2]);
     }
     if count > 1 {
         shown.push(last);

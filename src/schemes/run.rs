@@ -221,7 +221,9 @@ pub fn propose_with(
     let mut pool = run.verified(searched.iter().map(|found| found.tower.clone()).collect());
     let varied = run.vary(&pool);
     pool.extend(run.verified(varied));
-    if given.feasible {
+    // The tower as given is no scheme where another takes no more concrete.
+    let as_good = |scheme: &Scheme| scheme.feasible && scheme.added_concrete <= 0.0;
+    if given.feasible && !pool.iter().any(as_good) {
         pool.push(given.clone());
     }
     let schemes = pick(pool, settings.schemes);
