@@ -14,7 +14,7 @@ use assert_cmd::Command;
 use serde_json::Value;
 use tempfile::TempDir;
 
-const ANNOTATED: &str = include_str!("towers/annotated.toml");
+const QUICK: &str = include_str!("towers/quick.toml");
 const LANTERN: &str = include_str!("towers/low_lantern.toml");
 
 fn folder_of(text: &str, threads: &str, seed: &str) -> BTreeMap<String, Vec<u8>> {
@@ -47,7 +47,7 @@ fn files(folder: &Path) -> BTreeMap<String, Vec<u8>> {
 
 #[test]
 fn threads_change_no_byte() {
-    for text in [ANNOTATED, LANTERN] {
+    for text in [QUICK, LANTERN] {
         let one = folder_of(text, "1", "1");
         assert!(one.len() >= 3);
         for threads in ["2", "4"] {
@@ -69,7 +69,7 @@ fn checks_change_no_byte_with_threads() {
         Command::cargo_bin("corewright")
             .unwrap()
             .args(["check", "-", "--json", "--threads", threads])
-            .write_stdin(ANNOTATED)
+            .write_stdin(QUICK)
             .output()
             .unwrap()
             .stdout

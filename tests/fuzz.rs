@@ -510,9 +510,11 @@ fn files_with_bytes_changed_come_to_an_answer() {
     assert!(files.len() > 30);
     let mut random = Xoshiro256PlusPlus::seed_from_u64(12);
     let (mut accepted, mut refused, mut checked, mut failed) = (0, 0, 0, 0);
-    let rounds = cases() as usize / 2;
     for path in &files {
         let original = fs::read(path).expect("a bundled file");
+        // Broken files stay broken, mostly: a few rounds each are enough.
+        let broken = path.components().any(|part| part.as_os_str() == "bad");
+        let rounds = cases() as usize / if broken { 10 } else { 1 } * 2;
         for round in 0..rounds {
             let mut bytes = original.clone();
             for _ in 0..random.random_range(1..=6) {
@@ -528,7 +530,7 @@ fn files_with_bytes_changed_come_to_an_answer() {
                 Ok(file) => {
                     accepted += 1;
                     // Tall towers take their time; reading them is what counts here.
-                    if file.tower.storey_count() > 15 && round % 25 != 0 {
+                    if file.tower.storey_count() > 15 && round % 50 != 0 {
                         continue;
                     }
                     match examine(&file.tower) {
@@ -543,7 +545,7 @@ fn files_with_bytes_changed_come_to_an_answer() {
         "{} files, {accepted} accepted, {refused} refused; {checked} checked, {failed} without an analysis",
         files.len()
     );
-    assert!(accepted > 50 && refused > 500 && checked > 10);
+    assert!(accepted > 30 && refused > 500 && checked > 5);
 }
 
 /// One small change: a byte, a digit, a piece moved, doubled or cut out.

@@ -362,8 +362,8 @@ fn askew(width: f64) -> Tower {
 #[test]
 fn a_near_mechanism_is_solved_or_named() {
     let (mut solved, mut refused) = (0, 0);
-    for exponent in 0..16 {
-        let width = 0.5 * 10.0_f64.powf(-0.35 * f64::from(exponent));
+    for step in 0..40 {
+        let width = 0.5 * 10.0_f64.powf(-0.1 * f64::from(step));
         match errors(&askew(width)) {
             Ok((moved, eigenvalues)) => {
                 solved += 1;

@@ -40,14 +40,14 @@ pub enum AnalysisError {
         state: &'static str,
     },
     #[error(
-        "the tower can move almost without resistance: {freedom} ({state}) gives {share:.0e} times as far as the stiffest, beyond what can be told from rounding; there: {nearby}; check that they hold it and are connected and supported below"
+        "the tower can move almost without resistance: {freedom} ({state}) is known to {digits:.0e} of itself only, for what holds it is that much softer than its neighbours; there: {nearby}; check that they hold it and are connected and supported below"
     )]
     NearMechanism {
         freedom: String,
         nearby: String,
         state: &'static str,
-        /// Largest flexibility over smallest.
-        share: f64,
+        /// Relative error of the displacement.
+        digits: f64,
     },
     #[error(
         "the tower buckles under its own gravity load ({state}); stiffen it, or leave p_delta off to see its critical load factor"
@@ -61,6 +61,22 @@ pub enum AnalysisError {
     MissingMode { found: usize, missing: &'static str },
     #[error("a result is not a finite number ({0}); check the sizes for extreme values")]
     NotFinite(&'static str),
+}
+
+impl AnalysisError {
+    /// For the freedom whose pivot fails.
+    pub(super) fn mechanism(
+        freedoms: &Freedoms,
+        number: usize,
+        tower: &Tower,
+        state: LimitState,
+    ) -> Self {
+        AnalysisError::Mechanism {
+            freedom: freedoms.describe(number, tower),
+            nearby: freedoms.nearby(number, tower),
+            state: words(state),
+        }
+    }
 }
 
 /// Everything an analysis says about a tower at given sizes.
@@ -268,6 +284,9 @@ const MOST_MODES: usize = 60;
 /// Softest over stiffest flexibility beyond which modes that cannot be found are
 /// blamed on it.
 const TOO_SOFT: f64 = 1e8;
+/// Relative error up to which a displacement keeps six digits, with some room
+/// for what one step of refinement does not see.
+const SIX_DIGITS: f64 = 2e-7;
 
 impl Analyst {
     /// For the present layout of `tower`.
@@ -1215,7 +1234,7 @@ impl Analyst {
             freedom: self.freedoms.describe(number, &self.tower),
             nearby: self.freedoms.nearby(number, &self.tower),
             state: words(state.state),
-            share,
+            digits: share * f64::EPSILON,
         })
     }
 
@@ -1455,15 +1474,64 @@ impl State {
             return Err(if self.softening.is_some() {
                 AnalysisError::Buckles { state }
             } else {
-                AnalysisError::Mechanism {
-                    freedom: freedoms.describe(failure.index, tower),
-                    nearby: freedoms.nearby(failure.index, tower),
-                    state,
-                }
+                AnalysisError::mechanism(freedoms, failure.index, tower, self.state)
             });
         }
         let factor = self.factor.as_ref().expect("just made");
+        if self.softening.is_none() {
+            self.keeps_digits(factor, freedoms, floor_numbers, tower)?;
+        }
         factor.flexibility_into(floor_numbers, &mut self.workspace, &mut self.flexibility);
+        Ok(())
+    }
+
+    /// Solves for forces along X, along Y and for torques, and for what is left
+    /// of them (one step of iterative refinement; Wilkinson 1963, Rounding Errors
+    /// in Algebraic Processes): the second answer is the error of the first.
+    fn keeps_digits(
+        &self,
+        factor: &Factor,
+        freedoms: &Freedoms,
+        floor_numbers: &[usize],
+        tower: &Tower,
+    ) -> Result<(), AnalysisError> {
+        let mut moved = Dense::zeros(freedoms.count(), 3);
+        for (index, &number) in floor_numbers.iter().enumerate() {
+            moved.col_mut(index % 3)[number] = 1.0;
+        }
+        factor.solve_in_place(&mut moved);
+        let mut left = Dense::zeros(freedoms.count(), 3);
+        for column in 0..3 {
+            let held = self.stiffness.multiply(moved.col(column));
+            let target = left.col_mut(column);
+            for (rest, held) in target.iter_mut().zip(held) {
+                *rest = -held;
+            }
+            for &number in floor_numbers.iter().skip(column).step_by(3) {
+                target[number] += 1.0;
+            }
+        }
+        factor.solve_in_place(&mut left);
+        for column in 0..3 {
+            let (moved, wrong) = (moved.col(column), left.col(column));
+            for kind in 0..3 {
+                let of_kind = || floor_numbers.iter().skip(kind).step_by(3);
+                let most = of_kind().fold(0.0_f64, |most, &n| most.max(moved[n].abs()));
+                let worst = of_kind().max_by(|&&a, &&b| wrong[a].abs().total_cmp(&wrong[b].abs()));
+                let Some(&worst) = worst.filter(|_| kind == column) else {
+                    continue;
+                };
+                let error = wrong[worst].abs() / most;
+                if !(error < SIX_DIGITS) {
+                    return Err(AnalysisError::NearMechanism {
+                        freedom: freedoms.describe(worst, tower),
+                        nearby: freedoms.nearby(worst, tower),
+                        state: words(self.state),
+                        digits: error,
+                    });
+                }
+            }
+        }
         Ok(())
     }
 

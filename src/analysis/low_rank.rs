@@ -194,13 +194,8 @@ impl LowRank {
             let stiffness = Stiffness::new(tower, &sizes, &freedoms, state);
             let mut matrix = BlockTridiagonal::new(&freedoms.blocks);
             stiffness.assemble(&mut matrix);
-            let factor = Factor::new(&matrix).map_err(|failure| AnalysisError::Mechanism {
-                freedom: freedoms.describe(failure.index, tower),
-                nearby: freedoms.nearby(failure.index, tower),
-                state: match state {
-                    LimitState::Unfactored => "unfactored section properties",
-                    LimitState::Factored => "factored section properties",
-                },
+            let factor = Factor::new(&matrix).map_err(|failure| {
+                AnalysisError::mechanism(&freedoms, failure.index, tower, state)
             })?;
 
             // K^-1 of the rows, of the cases of this state, and nothing else.

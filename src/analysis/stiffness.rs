@@ -223,6 +223,32 @@ impl Stiffness {
         }
     }
 
+    /// `K q`, summed over rows and springs: exact to rounding where the matrix
+    /// itself has lost soft members beside stiff ones.
+    pub fn multiply(&self, q: &[f64]) -> Vec<f64> {
+        let mut product = vec![0.0; q.len()];
+        for strip in &self.strips {
+            let kind = &self.kinds[strip.kind];
+            let rows = &kind.rows;
+            let part = strip.start..strip.start + kind.width;
+            let (q, product) = (&q[part.clone()], &mut product[part]);
+            for row in 0..rows.stiffness.len() {
+                let force = rows.stiffness[row] * rows.strain(row, q);
+                let range = rows.range(row);
+                for (&number, b) in rows.numbers[range.clone()]
+                    .iter()
+                    .zip(&rows.coefficients[range])
+                {
+                    product[number] += b * force;
+                }
+            }
+        }
+        for &(number, stiffness) in &self.springs {
+            product[number] += stiffness * q[number];
+        }
+        product
+    }
+
     /// `p' (dK/d size) q` for every size, `p` and `q` over all freedoms.
     pub fn gradient(&self, p: &[f64], q: &[f64]) -> Vec<f64> {
         let mut gradient = vec![0.0; self.size_count];

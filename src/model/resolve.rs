@@ -72,8 +72,7 @@ pub(super) fn mass_of_loads(extent: Extent, dead: f64, imposed: f64, share: f64)
 
 /// Gravity load of a floor whose mass is stated, Pa.
 pub(super) fn dead_of_mass(extent: Extent, mass: f64) -> f64 {
-    // Rounded through kPa, so that the load itself can be printed exactly.
-    mass * GRAVITY / area(extent) / 1e3 * 1e3
+    mass * GRAVITY / area(extent)
 }
 
 pub(super) fn area(extent: Extent) -> f64 {

@@ -166,7 +166,9 @@ impl Page {
                     "loads",
                     format!(
                         "{{ dead_kpa = {}, imposed_kpa = {} }}",
-                        scaled(floor.dead, 1e3),
+                        // A load that follows from a mass is no less exact for
+                        // looking like noise.
+                        stated.map_or_else(|| scaled(floor.dead, 1e3), |kpa| kpa.to_string()),
                         scaled(floor.imposed, 1e3)
                     ),
                 );
