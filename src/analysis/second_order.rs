@@ -68,9 +68,8 @@ impl Geometric {
             let block = inertia.matrix();
             let (upper, at_upper) = levels[storey];
             let lower = storey.checked_sub(1).map(|level| levels[level]);
-            for i in 0..3 {
-                for j in 0..3 {
-                    let value = block[i][j];
+            for (i, row) in block.iter().enumerate() {
+                for (j, &value) in row.iter().enumerate() {
                     let here = matrix.diagonal_mut(upper);
                     here.col_mut(at_upper + j)[at_upper + i] -= value;
                     let Some((lower, at_lower)) = lower else {

@@ -411,10 +411,7 @@ mod tests {
             struct Holder {
                 rule: Rule,
             }
-            assert_eq!(
-                toml::from_str::<Holder>(&text).expect(rule.key()).rule,
-                rule
-            );
+            assert_eq!(toml::from_str::<Holder>(&text).expect("a rule").rule, rule);
         }
     }
 

@@ -9,6 +9,7 @@ use crate::analysis::analyst::{AnalysisError, Response};
 use crate::analysis::inertia::{Masses, Part};
 use crate::checks::periods::Fundamental;
 use crate::checks::{Check, all_pass, governing};
+use crate::design::evaluate::first_order_periods;
 use crate::model::sizes::Size;
 use crate::model::tower::{StoreyRange, Tower};
 use crate::schemes::conflict::Conflict;
@@ -69,6 +70,9 @@ pub struct CheckReport {
     pub verdict: String,
     #[serde(flatten)]
     pub results: Results,
+    /// Without P-delta, where the tower asks for it and the others have it.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub first_order_periods: Option<Periods>,
     pub centres: Vec<CentreSummary>,
     pub cases: Vec<CaseSummary>,
     pub quantities: QuantitySummary,
@@ -137,6 +141,8 @@ pub struct ModeSummary {
 
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct CheckSummary {
+    /// What the check guards.
+    pub limit_state: &'static str,
     pub name: String,
     pub clause: String,
     pub demand: f64,
@@ -154,6 +160,7 @@ pub struct CheckSummary {
 impl CheckSummary {
     pub fn of(check: &Check) -> Self {
         CheckSummary {
+            limit_state: check.limit_state,
             name: check.name.clone(),
             clause: check.clause.clone(),
             demand: check.demand,
@@ -302,6 +309,11 @@ impl CheckReport {
             status,
             verdict: words::verdict(&results.checks),
             results,
+            first_order_periods: first_order_periods(tower)?.map(|[x_s, y_s, twist_s]| Periods {
+                x_s,
+                y_s,
+                twist_s,
+            }),
             centres: centres
                 .map(|(index, centres)| CentreSummary {
                     storey: index + 1,
