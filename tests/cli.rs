@@ -252,7 +252,7 @@ fn proposed_schemes_are_files_that_check_confirms() {
     }
     assert_eq!(schemes[0]["feasible"], true);
     assert_bounded(&report);
-    files.extend(["schemes.csv".to_owned(), "schemes.json".to_owned()]);
+    files.extend(["report.html", "schemes.csv", "schemes.json"].map(str::to_owned));
     files.sort();
     assert_eq!(desk.names("made/here"), files);
 
@@ -397,6 +397,7 @@ fn files_of_an_earlier_run_do_not_stay_beside_the_new() {
     assert_eq!(code, 0);
     let names = [
         "letter.txt",
+        "report.html",
         "scheme-01.toml",
         "schemes.csv",
         "schemes.json",

@@ -90,7 +90,7 @@ fn drifts_and_base_shears_are_those_of_an_independent_analysis() {
 #[test]
 fn an_eccentric_storey_vibrates_as_the_textbook_says() {
     let foot = 0.3048;
-    let kip = 4448.221615;
+    let kip = 4_448.221_615;
     let mass = 60.0 * kip / (32.2 * foot);
     let (long, wide) = (30.0 * foot, 20.0 * foot);
     let inertia = mass * (long * long + wide * wide) / 12.0;

@@ -6,10 +6,8 @@
 //! the base shear `A G^2`; CQC sums `rho_nm R_n R_m`. Its derivative needs that
 //! of shapes: for a mode n and a floor vector w,
 //!
-//! ```text
-//! w' dphi = v' (dK - l dM) phi - (w'phi)/2 phi' dM phi,
-//! v = sum over other modes m of phi_m (phi_m'w)/(l_n - l_m),
-//! ```
+//! - `w' dphi = v' (dK - l dM) phi - (w'phi)/2 phi' dM phi`,
+//! - `v = sum over other modes m of phi_m (phi_m'w)/(l_n - l_m)`,
 //!
 //! where modes that were not worked out come in through the flexibility: their
 //! share of v solves `v = F (l M v - w)` and is had by repeating that, which

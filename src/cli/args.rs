@@ -9,7 +9,8 @@ use corewright::schemes::run::Settings;
 
 const EXIT_CODES: &str = "\
 Exit codes:
-  0    it passes; for propose: at least one scheme passes every check
+  0    it passes; for propose: at least one scheme passes every check;
+       for compare: both towers pass; for report and expand: it is written
   1    it ran, and the answer is no, or none was found before a limit was reached
        (\"status\" in the JSON tells \"infeasible\" from \"undecided\")
   2    the command or the input is wrong, or a result cannot be written
@@ -42,6 +43,12 @@ pub enum Command {
     /// Map every set of one to four outrigger or belt places, by each quantity
     #[command(after_help = EXIT_CODES)]
     Outriggers(OutriggersArguments),
+    /// Set two towers side by side
+    #[command(after_help = EXIT_CODES)]
+    Compare(CompareArguments),
+    /// Make report.html again from a folder's schemes.json
+    #[command(after_help = EXIT_CODES)]
+    Report(ReportArguments),
     /// Print a tower file in full: every node, member and default spelt out
     #[command(after_help = EXIT_CODES)]
     Expand(ExpandArguments),
@@ -54,6 +61,9 @@ pub struct CheckArguments {
     /// Write JSON instead of text
     #[arg(long)]
     pub json: bool,
+    /// Write a report of the tower to this file too: one HTML page that needs no network
+    #[arg(long, value_name = "FILE")]
+    pub report: Option<PathBuf>,
     /// Threads to use [default: all cores]; changes nothing in the answer
     #[arg(long, value_name = "N", value_parser = count(1024))]
     pub threads: Option<usize>,
@@ -63,7 +73,7 @@ pub struct CheckArguments {
 pub struct ProposeArguments {
     /// Tower file (TOML); "-" reads standard input
     pub file: PathBuf,
-    /// Folder for scheme-01.toml ..., schemes.json and schemes.csv; made when missing
+    /// Folder for scheme-01.toml ..., schemes.json, schemes.csv and report.html; made when missing
     #[arg(long, value_name = "DIR")]
     pub out: PathBuf,
     /// Write schemes.json to standard output too, instead of text
@@ -135,6 +145,29 @@ pub enum MapsWanted {
     /// Everything that moves
     All,
     None,
+}
+
+#[derive(Debug, Args)]
+pub struct CompareArguments {
+    /// Tower file (TOML)
+    pub first: PathBuf,
+    /// Tower file (TOML) to set against it
+    pub second: PathBuf,
+    /// Write JSON instead of text
+    #[arg(long)]
+    pub json: bool,
+}
+
+#[derive(Debug, Args)]
+pub struct ReportArguments {
+    /// Folder that propose wrote
+    pub folder: PathBuf,
+    /// Write to this file instead of report.html in the folder
+    #[arg(long, short, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+    /// Write the best scheme's plan to this file too, as SVG
+    #[arg(long, value_name = "FILE")]
+    pub plan: Option<PathBuf>,
 }
 
 #[derive(Debug, Args)]

@@ -6,12 +6,14 @@
 
 mod args;
 mod check;
+mod compare;
 mod expand;
 mod input;
 mod message;
 mod outriggers;
 mod progress;
 mod propose;
+mod report;
 mod signals;
 
 use std::process::ExitCode;
@@ -35,6 +37,8 @@ pub fn run() -> ExitCode {
         Command::Check(typed) => check::run(typed),
         Command::Propose(typed) => propose::run(typed, arguments.quiet),
         Command::Outriggers(typed) => outriggers::run(typed),
+        Command::Compare(typed) => compare::run(typed),
+        Command::Report(typed) => report::run(typed),
         Command::Expand(typed) => expand::run(typed),
     };
     match answer {

@@ -411,7 +411,12 @@ mod tests {
             struct Holder {
                 rule: Rule,
             }
-            assert_eq!(toml::from_str::<Holder>(&text).expect("a rule").rule, rule);
+            assert_eq!(
+                toml::from_str::<Holder>(&text)
+                    .expect("a rule of the files")
+                    .rule,
+                rule
+            );
         }
     }
 

@@ -12,3 +12,7 @@ pub const CAUTIONS: [&str; 4] = [
     "A search looks at many designs, not at all: a cheaper scheme may exist down to the lower \
      bound, where one is stated, and \"nothing found\" alone does not mean \"impossible\".",
 ];
+
+pub fn cautions() -> Vec<std::borrow::Cow<'static, str>> {
+    CAUTIONS.iter().map(|&text| text.into()).collect()
+}

@@ -134,8 +134,8 @@ fn modes(results: &Results) -> String {
     text
 }
 
-fn class(mode: &ModeSummary) -> &'static str {
-    match mode.class {
+fn class(mode: &ModeSummary) -> &str {
+    match mode.class.as_ref() {
         "x" => "X",
         "y" => "Y",
         other => other,
@@ -169,14 +169,14 @@ fn grouped(by_urgency: &[&CheckSummary]) -> String {
     let few = ["Modes", "Drift", "Gravity", "Buildability"];
     if by_urgency
         .iter()
-        .all(|check| few.contains(&check.limit_state))
+        .all(|check| few.contains(&check.limit_state.as_ref()))
     {
         return checks(by_urgency);
     }
     let mut states: Vec<&str> = Vec::new();
     for check in by_urgency {
-        if !states.contains(&check.limit_state) {
-            states.push(check.limit_state);
+        if !states.contains(&check.limit_state.as_ref()) {
+            states.push(&check.limit_state);
         }
     }
     let mut text = String::new();
@@ -206,7 +206,7 @@ fn checks(checks: &[&CheckSummary]) -> String {
     ]);
     let mut sources: Vec<String> = Vec::new();
     for check in checks {
-        let (demand, limit) = against(check.demand, check.limit, check.unit);
+        let (demand, limit) = against(check.demand, check.limit, &check.unit);
         let source = format!("{}; {}", check.clause, check.source);
         let source = sources
             .iter()
@@ -218,7 +218,7 @@ fn checks(checks: &[&CheckSummary]) -> String {
         table.add_row([
             check.name.clone(),
             demand,
-            format!("{limit} {}", unit_beside(check.unit)),
+            format!("{limit} {}", unit_beside(&check.unit)),
             utilisation(check.utilisation),
             verdict(check).to_owned(),
             check.place.clone(),
@@ -253,12 +253,12 @@ fn letter(index: usize) -> String {
 }
 
 fn centres(text: &mut String, report: &CheckReport) {
-    let (Some(last), count) = (report.centres.last(), report.centres.len()) else {
+    let (Some(last), count) = (report.detail.centres.last(), report.detail.centres.len()) else {
         return;
     };
-    let mut shown = vec![&report.centres[0]];
+    let mut shown = vec![&report.detail.centres[0]];
     if count > 2 {
-        shown.push(&report.centres[(count - 1) / 2]);
+        shown.push(&report.detail.centres[(count - 1) / 2]);
     }
     if count > 1 {
         shown.push(last);

@@ -1,5 +1,5 @@
-//! A folder of schemes: every scheme a tower file, with `schemes.json` and
-//! `schemes.csv` beside them.
+//! A folder of schemes: every scheme a tower file, with `schemes.json`,
+//! `schemes.csv` and `report.html` beside them.
 //!
 //! Each scheme file is written, read back by the reader and examined afresh
 //! before it is called feasible. Files appear whole or not at all: they are
@@ -13,8 +13,10 @@ use std::path::{Path, PathBuf};
 use serde::Serialize;
 use tempfile::NamedTempFile;
 
-use super::cautions::CAUTIONS;
+use super::cautions::cautions;
+use super::detail::Detail;
 use super::numbers::signed_amount;
+use super::page::proposal_page;
 use super::proposal_text::verdict;
 use super::summary::{
     BoundSummary, ChangeSummary, ConflictSummary, CoverageSummary, GivenSummary, Origin,
@@ -114,11 +116,13 @@ pub fn write_folder(
     let report = report(proposal, &staged, circumstances)?;
     let json = json(&report);
     let csv = stage(folder, &csv(&report))?;
+    let page = stage(folder, &proposal_page(&report))?;
     let json = stage(folder, &json)?;
     for (scheme, summary) in staged.into_iter().zip(&report.schemes) {
         place(scheme.file, &folder.join(&summary.file))?;
     }
     place(csv, &folder.join("schemes.csv"))?;
+    place(page, &folder.join("report.html"))?;
     place(json, &folder.join("schemes.json"))?;
     flush_folder(folder);
     remove_stale(folder, report.schemes.len())?;
@@ -239,7 +243,7 @@ fn report(
         status,
         verdict: verdict(status, ended, &schemes, bound.as_ref()),
         bound,
-        ended,
+        ended: ended.into(),
         settings: SettingSummary::of(&circumstances.settings, circumstances.time_limit_s),
         coverage: CoverageSummary::of(&proposal.coverage),
         given,
@@ -251,7 +255,7 @@ fn report(
             .filter(|_| finished)
             .map(ConflictSummary::of),
         warnings: circumstances.warnings,
-        cautions: CAUTIONS.to_vec(),
+        cautions: cautions(),
         origin: circumstances.origin,
     })
 }
@@ -278,11 +282,8 @@ fn summary(
         changes,
         results,
         quantities: QuantitySummary::of(&scheme.quantities, &scheme.response.masses),
-        sensitivities: scheme
-            .sensitivities
-            .iter()
-            .map(SensitivitySummary::of)
-            .collect(),
+        detail: Detail::of(&scheme.tower, &scheme.response),
+        sensitivities: SensitivitySummary::all(scheme),
     })
 }
 

@@ -10,8 +10,11 @@
 
 pub mod cautions;
 pub mod check_text;
+pub mod compare;
+pub mod detail;
 pub mod folder;
 pub mod numbers;
+pub mod page;
 pub mod placement_summary;
 pub mod placement_text;
 pub mod proposal_text;

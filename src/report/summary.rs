@@ -1,9 +1,12 @@
 //! Results as they stand in JSON: units in the names of keys, every number
 //! finite, nothing that depends on the machine or on the number of threads.
 
-use serde::Serialize;
+use std::borrow::Cow;
 
-use super::cautions::CAUTIONS;
+use serde::{Deserialize, Serialize};
+
+use super::cautions::cautions;
+use super::detail::{Assumption, Detail, FloorSummary, LimitSummary, millimetres};
 use super::words;
 use crate::analysis::analyst::{AnalysisError, Response};
 use crate::analysis::inertia::{Masses, Part};
@@ -14,13 +17,13 @@ use crate::model::sizes::Size;
 use crate::model::tower::{StoreyRange, Tower};
 use crate::schemes::conflict::Conflict;
 use crate::schemes::run::{Bound, Coverage, Settings};
-use crate::schemes::scheme::{Change, Changed, Key, Quantities, Scheme, Sensitivity, quantities};
+use crate::schemes::scheme::{Change, Changed, Key, Quantities, Scheme, Sensitivity};
 
 /// Where a report comes from.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Origin {
-    pub program: &'static str,
-    pub version: &'static str,
+    pub program: Cow<'static, str>,
+    pub version: Cow<'static, str>,
     /// Name of the tower file, as it was asked for.
     pub input: String,
     /// SHA-256 (FIPS 180-4) of the tower file, in hexadecimal.
@@ -30,8 +33,8 @@ pub struct Origin {
 impl Origin {
     pub fn new(input: String, text: &str) -> Self {
         Origin {
-            program: env!("CARGO_PKG_NAME"),
-            version: env!("CARGO_PKG_VERSION"),
+            program: env!("CARGO_PKG_NAME").into(),
+            version: env!("CARGO_PKG_VERSION").into(),
             input,
             input_sha256: sha256(text),
         }
@@ -48,7 +51,7 @@ pub fn sha256(text: &str) -> String {
 }
 
 /// The answer in one word.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
 #[serde(rename_all = "lowercase")]
 pub enum Status {
     /// Every check passes; in a search: for at least one scheme.
@@ -60,7 +63,7 @@ pub enum Status {
 }
 
 /// All that `check` tells.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct CheckReport {
     #[serde(flatten)]
     pub origin: Origin,
@@ -71,22 +74,30 @@ pub struct CheckReport {
     #[serde(flatten)]
     pub results: Results,
     /// Without P-delta, where the tower asks for it and the others have it.
-    #[serde(skip_serializing_if = "Option::is_none")]
+    #[serde(default, skip_serializing_if = "Option::is_none")]
     pub first_order_periods: Option<Periods>,
-    pub centres: Vec<CentreSummary>,
-    pub cases: Vec<CaseSummary>,
+    #[serde(flatten)]
+    pub detail: Detail,
     pub quantities: QuantitySummary,
+    /// Against the sizes and choices that the file states as given, m3.
+    pub added_concrete_m3: f64,
+    pub changes: Vec<ChangeSummary>,
+    pub sensitivities: Vec<SensitivitySummary>,
     /// What the reader of the tower file noticed.
     pub warnings: Vec<String>,
-    pub cautions: Vec<&'static str>,
+    pub cautions: Vec<Cow<'static, str>>,
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct TowerSummary {
     pub name: String,
     pub question: String,
     pub storeys: usize,
     pub height_m: f64,
+    /// Bottom to top; the same for all designs.
+    pub floors: Vec<FloorSummary>,
+    pub assumptions: Vec<Assumption>,
+    pub limits: Vec<LimitSummary>,
 }
 
 impl TowerSummary {
@@ -96,12 +107,15 @@ impl TowerSummary {
             question: tower.question.clone(),
             storeys: tower.storey_count(),
             height_m: tower.height(),
+            floors: FloorSummary::all(tower),
+            assumptions: Assumption::all(tower),
+            limits: LimitSummary::all(&tower.limits),
         }
     }
 }
 
 /// Modes, ratios and checks of one analysed tower.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Results {
     pub periods: Periods,
     /// Torsional period over the smaller translational one (IS 16700).
@@ -118,36 +132,37 @@ pub struct Results {
 }
 
 /// First period of each class.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
 pub struct Periods {
     pub x_s: f64,
     pub y_s: f64,
     pub twist_s: f64,
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct ModeSummary {
     pub number: usize,
     pub period_s: f64,
     pub share_x: f64,
     pub share_y: f64,
     pub share_twist: f64,
-    pub class: &'static str,
+    pub class: Cow<'static, str>,
     pub coupled: bool,
     pub captured_x: f64,
     pub captured_y: f64,
     pub captured_twist: f64,
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct CheckSummary {
     /// What the check guards.
-    pub limit_state: &'static str,
+    #[serde(default)]
+    pub limit_state: Cow<'static, str>,
     pub name: String,
     pub clause: String,
     pub demand: f64,
     pub limit: f64,
-    pub unit: &'static str,
+    pub unit: Cow<'static, str>,
     pub utilisation: f64,
     pub passes: bool,
     /// Switched off by the engineer: shown, not judged.
@@ -160,12 +175,12 @@ pub struct CheckSummary {
 impl CheckSummary {
     pub fn of(check: &Check) -> Self {
         CheckSummary {
-            limit_state: check.limit_state,
+            limit_state: Cow::Borrowed(check.limit_state),
             name: check.name.clone(),
             clause: check.clause.clone(),
             demand: check.demand,
             limit: check.limit,
-            unit: check.unit,
+            unit: check.unit.into(),
             utilisation: check.utilisation,
             passes: check.passes,
             off: check.off,
@@ -202,7 +217,7 @@ impl Results {
                     share_x: mode.shares[0],
                     share_y: mode.shares[1],
                     share_twist: mode.shares[2],
-                    class: mode.class.name(),
+                    class: mode.class.name().into(),
                     coupled: mode.coupled,
                     captured_x: mode.captured[0],
                     captured_y: mode.captured[1],
@@ -231,26 +246,7 @@ impl Results {
     }
 }
 
-/// Plan centres of one storey, in the tower file's coordinates.
-#[derive(Debug, Clone, PartialEq, Serialize)]
-pub struct CentreSummary {
-    pub storey: usize,
-    pub mass_x_m: f64,
-    pub mass_y_m: f64,
-    pub rigidity_x_m: f64,
-    pub rigidity_y_m: f64,
-}
-
-/// Drifts of one lateral case at both ends of the floors, over height, signed.
-#[derive(Debug, Clone, PartialEq, Serialize)]
-pub struct CaseSummary {
-    pub name: String,
-    /// Bottom to top.
-    pub storey_drift: Vec<[f64; 2]>,
-    pub top_drift: [f64; 2],
-}
-
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct QuantitySummary {
     pub walls_m3: f64,
     pub columns_m3: f64,
@@ -290,19 +286,16 @@ impl CheckReport {
     /// As [`Results::of`].
     pub fn new(
         origin: Origin,
-        tower: &Tower,
-        response: &Response,
-        checks: &[Check],
+        examined: &Scheme,
         warnings: Vec<String>,
     ) -> Result<Self, AnalysisError> {
-        let results = Results::of(response, checks)?;
-        let status = if all_pass(checks) {
+        let (tower, response) = (&examined.tower, &examined.response);
+        let results = Results::of(response, &examined.checks)?;
+        let status = if all_pass(&examined.checks) {
             Status::Feasible
         } else {
             Status::Infeasible
         };
-        let centres = response.centres.iter().flatten().enumerate();
-        let cases = response.cases.iter();
         Ok(CheckReport {
             origin,
             tower: TowerSummary::of(tower),
@@ -314,31 +307,19 @@ impl CheckReport {
                 y_s,
                 twist_s,
             }),
-            centres: centres
-                .map(|(index, centres)| CentreSummary {
-                    storey: index + 1,
-                    mass_x_m: centres.mass.x,
-                    mass_y_m: centres.mass.y,
-                    rigidity_x_m: centres.rigidity.x,
-                    rigidity_y_m: centres.rigidity.y,
-                })
-                .collect(),
-            cases: cases
-                .map(|moved| CaseSummary {
-                    name: moved.name.clone(),
-                    storey_drift: moved.storey_drift.clone(),
-                    top_drift: moved.top_drift,
-                })
-                .collect(),
-            quantities: QuantitySummary::of(&quantities(tower, &response.masses), &response.masses),
+            detail: Detail::of(tower, response),
+            quantities: QuantitySummary::of(&examined.quantities, &response.masses),
+            added_concrete_m3: examined.added_concrete,
+            changes: examined.changes.iter().map(ChangeSummary::of).collect(),
+            sensitivities: SensitivitySummary::all(examined),
             warnings,
-            cautions: CAUTIONS.to_vec(),
+            cautions: cautions(),
         })
     }
 }
 
 /// All that `propose` tells; the content of `schemes.json`.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct ProposalReport {
     #[serde(flatten)]
     pub origin: Origin,
@@ -348,7 +329,7 @@ pub struct ProposalReport {
     pub verdict: String,
     /// Why the search ended: "finished", "interrupted", "time limit", "stopped"
     /// (by a caller of the library) or "out of analyses".
-    pub ended: &'static str,
+    pub ended: Cow<'static, str>,
     pub settings: SettingSummary,
     pub coverage: CoverageSummary,
     /// Absent where nothing is proven.
@@ -358,11 +339,11 @@ pub struct ProposalReport {
     pub schemes: Vec<SchemeSummary>,
     pub conflict: Option<ConflictSummary>,
     pub warnings: Vec<String>,
-    pub cautions: Vec<&'static str>,
+    pub cautions: Vec<Cow<'static, str>>,
 }
 
 /// What changes the answer.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct SettingSummary {
     pub seed: u64,
     pub schemes: usize,
@@ -383,7 +364,7 @@ impl SettingSummary {
     }
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct CoverageSummary {
     pub layouts_in_space: f64,
     pub layouts_screened: usize,
@@ -405,7 +386,7 @@ impl CoverageSummary {
 }
 
 /// How little concrete any design of the stated space can do with.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct BoundSummary {
     /// No design that passes the covered checks adds less; absent when none can
     /// pass them at all.
@@ -438,12 +419,15 @@ impl BoundSummary {
 }
 
 /// The tower as given.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct GivenSummary {
     pub feasible: bool,
     #[serde(flatten)]
     pub results: Results,
+    #[serde(flatten)]
+    pub detail: Detail,
     pub quantities: QuantitySummary,
+    pub sensitivities: Vec<SensitivitySummary>,
 }
 
 impl GivenSummary {
@@ -453,12 +437,14 @@ impl GivenSummary {
         Ok(GivenSummary {
             feasible: given.feasible,
             results: Results::of(&given.response, &given.checks)?,
+            detail: Detail::of(&given.tower, &given.response),
             quantities: QuantitySummary::of(&given.quantities, &given.response.masses),
+            sensitivities: SensitivitySummary::all(given),
         })
     }
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct SchemeSummary {
     pub rank: usize,
     /// In the same folder as the report.
@@ -479,11 +465,13 @@ pub struct SchemeSummary {
     pub changes: Vec<ChangeSummary>,
     #[serde(flatten)]
     pub results: Results,
+    #[serde(flatten)]
+    pub detail: Detail,
     pub quantities: QuantitySummary,
     pub sensitivities: Vec<SensitivitySummary>,
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct ChangeSummary {
     pub words: String,
     #[serde(flatten)]
@@ -494,7 +482,7 @@ pub struct ChangeSummary {
     pub after: Option<KeySummary>,
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[serde(tag = "kind", rename_all = "snake_case")]
 pub enum ChangedSummary {
     WallThickness(SizeChange),
@@ -505,7 +493,7 @@ pub enum ChangedSummary {
     CoreOffset { from_m: [f64; 2], to_m: [f64; 2] },
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct SizeChange {
     pub group: String,
     pub storeys: [usize; 2],
@@ -514,14 +502,14 @@ pub struct SizeChange {
 }
 
 /// Thickness of the arms at one place; none where no arms stand.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct PlaceChange {
     pub storeys: [usize; 2],
     pub from_mm: Option<f64>,
     pub to_mm: Option<f64>,
 }
 
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
 pub struct KeySummary {
     pub period_x_s: f64,
     pub period_y_s: f64,
@@ -590,16 +578,21 @@ impl ChangeSummary {
 }
 
 /// How the main results move with one size.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct SensitivitySummary {
     pub size: String,
+    /// "wall_thickness", "link_depth", "outrigger", "belt" or "core_offset".
+    pub kind: Cow<'static, str>,
+    /// Of walls or link beams.
+    pub group: Option<String>,
+    pub storeys: Option<[usize; 2]>,
     pub concrete_m3_per_mm: f64,
     pub per_mm: Slopes,
     /// None for the core's offset, which is not paid in concrete.
     pub per_m3: Option<Slopes>,
 }
 
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Slopes {
     pub period_x_s: f64,
     pub period_y_s: f64,
@@ -610,7 +603,34 @@ pub struct Slopes {
 }
 
 impl SensitivitySummary {
-    pub fn of(sensitivity: &Sensitivity) -> Self {
+    pub fn all(scheme: &Scheme) -> Vec<Self> {
+        let list = scheme.sensitivities.iter();
+        list.map(|sensitivity| Self::of(&scheme.tower, sensitivity))
+            .collect()
+    }
+
+    fn of(tower: &Tower, sensitivity: &Sensitivity) -> Self {
+        let pair = |storeys: StoreyRange| Some([storeys.first, storeys.last]);
+        let (kind, group, storeys) = match sensitivity.size {
+            Size::WallThickness { group, zone } => {
+                let walls = &tower.wall_groups[group];
+                let storeys = pair(walls.zones[zone].storeys);
+                ("wall_thickness", Some(walls.id.clone()), storeys)
+            }
+            Size::LinkDepth { group, zone } => {
+                let links = &tower.link_groups[group];
+                let storeys = pair(links.zones[zone].storeys);
+                ("link_depth", Some(links.id.clone()), storeys)
+            }
+            Size::OutriggerThickness { place } => {
+                let storeys = pair(tower.outriggers.places[place].storeys);
+                ("outrigger", None, storeys)
+            }
+            Size::BeltThickness { place } => {
+                ("belt", None, pair(tower.belts.places[place].storeys))
+            }
+            Size::CoreX | Size::CoreY => ("core_offset", None, None),
+        };
         let per = |amount: f64| Slopes {
             period_x_s: sensitivity.period_x / amount,
             period_y_s: sensitivity.period_y / amount,
@@ -627,6 +647,9 @@ impl SensitivitySummary {
         let costs = !moves && sensitivity.concrete != 0.0;
         SensitivitySummary {
             size: sensitivity.name.clone(),
+            kind: kind.into(),
+            group,
+            storeys,
             concrete_m3_per_mm: sensitivity.concrete / 1e3,
             per_mm: per(1e3),
             per_m3: costs.then(|| per(sensitivity.concrete)),
@@ -635,26 +658,21 @@ impl SensitivitySummary {
 }
 
 /// Why nothing passes, as far as the search finds; not proven.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct ConflictSummary {
     /// Checks that the nearest scheme fails.
     pub failing: Vec<CheckSummary>,
     /// Kinds of check that were not met together, none of which can be left out.
-    pub checks: Vec<&'static str>,
-    pub note: &'static str,
+    pub checks: Vec<Cow<'static, str>>,
+    pub note: Cow<'static, str>,
 }
 
 impl ConflictSummary {
     pub fn of(conflict: &Conflict) -> Self {
         ConflictSummary {
             failing: conflict.failing.iter().map(CheckSummary::of).collect(),
-            checks: conflict.checks.clone(),
-            note: words::NOT_PROVEN,
+            checks: conflict.checks.iter().map(|&kind| kind.into()).collect(),
+            note: words::NOT_PROVEN.into(),
         }
     }
-}
-
-/// A length in m as mm, rid of the last digits of binary arithmetic.
-fn millimetres(length: f64) -> f64 {
-    (length * 1e9).round() / 1e6
 }

@@ -123,8 +123,8 @@ fn counted(count: usize, what: &str, all: &str) -> String {
 
 /// A check with its demand and limit.
 pub fn demand(check: &CheckSummary) -> String {
-    let (demand, limit) = against(check.demand, check.limit, check.unit);
-    let unit = unit_beside(check.unit);
+    let (demand, limit) = against(check.demand, check.limit, &check.unit);
+    let unit = unit_beside(&check.unit);
     let unit = if unit.is_empty() {
         String::new()
     } else {
@@ -161,9 +161,9 @@ pub fn why(given: &Results, scheme: &Results, changes: &[ChangeSummary]) -> Stri
         let Some(now) = scheme.checks.iter().find(|check| check.name == before.name) else {
             continue;
         };
-        let was = against(before.demand, before.limit, before.unit);
-        let is = against(now.demand, now.limit, now.unit);
-        let unit = unit_beside(now.unit);
+        let was = against(before.demand, before.limit, &before.unit);
+        let is = against(now.demand, now.limit, &now.unit);
+        let unit = unit_beside(&now.unit);
         let gap = if unit.is_empty() { "" } else { " " };
         parts.push(format!(
             "{} goes from {} to {}{gap}{unit} against a limit of {}",
