@@ -8,6 +8,8 @@ mod common;
 use common::*;
 use corewright::analysis::analyst::Analyst;
 use corewright::checks::{checks, conditions};
+use corewright::codes::Rule;
+use corewright::loads::spectrum::Soil;
 use corewright::model::sizes::Sizes;
 use corewright::model::tower::*;
 use criterion::{Criterion, criterion_group, criterion_main};
@@ -76,6 +78,72 @@ fn tower(storeys: usize, bending: usize) -> Tower {
     tower
 }
 
+/// The same with a code's whole list: wind along and across that follows the
+/// frequencies, an earthquake by response spectrum in both directions, P-delta,
+/// and limits so strict that every kind of condition is near (invented).
+fn whole_list(mut tower: Tower) -> Tower {
+    tower.lateral_cases.clear();
+    tower.actions = Actions {
+        wind: Some(Wind {
+            basic_speed: 50.0,
+            terrain_category: 3,
+            risk_factor: 1.0,
+            topography_factor: 1.0,
+            importance_factor: 1.0,
+            force_coefficients: [1.3, 1.3],
+            interference_factor: 1.0,
+            damping: 0.02,
+            across: Some(AcrossWind {
+                spectrum_coefficient: Some(0.01),
+                mode_exponent: 1.0,
+            }),
+            comfort_years: 10.0,
+            comfort_damping: 0.011,
+        }),
+        earthquake: Some(Earthquake {
+            spectrum: DesignSpectrum::Standard {
+                zone_factor: 0.24,
+                importance: 1.2,
+                reduction: 4.0,
+                soil: Soil::Medium,
+            },
+            damping: 0.05,
+            period: [ApproximatePeriod::Walls; 2],
+            minimum_shear: 0.012,
+            minimum_source: "invented".into(),
+            accidental_eccentricity: 0.05,
+            scale_drifts: true,
+            state: LimitState::Factored,
+        }),
+        p_delta: true,
+    };
+    let limit = |value: f64| Limit {
+        value,
+        margin: 0.0,
+        clause: "bench".into(),
+        source: "invented".into(),
+        off: false,
+    };
+    for (rule, value) in [
+        (Rule::TorsionRatioToLonger, 0.5),
+        (Rule::Acceleration, 0.01),
+        (Rule::EndToEnd, 1.0),
+        (Rule::EndToAverage, 1.0),
+        (Rule::SoftStorey, 5.0),
+        (Rule::PeriodCloseness, 0.5),
+        (Rule::TorsionalRadius, 3.0),
+        (Rule::PDeltaCoefficient, 1e-3),
+        (Rule::CriticalLoadFactor, 1e4),
+        (Rule::CapturedMass, 0.9),
+    ] {
+        tower.limits.others.insert(rule, limit(value));
+    }
+    tower.limits.wind_storey_drift = limit(1e-5);
+    tower.limits.wind_top_drift = limit(1e-5);
+    tower.limits.earthquake_storey_drift = limit(1e-5);
+    tower
+}
+
 fn evaluation(criterion: &mut Criterion) {
     for bending in [13, 30] {
         let tower = tower(60, bending);
@@ -99,6 +167,22 @@ fn evaluation(criterion: &mut Criterion) {
             b.iter(|| {
                 let response = analyst.analyse(&values).expect("stands");
                 conditions(&analyst, &response).expect("modes")
+            })
+        });
+        let mut bare = tower.clone();
+        bare.lateral_cases.clear();
+        let mut alone = Analyst::new(&bare);
+        group.bench_function("modes and gravity alone", |b| {
+            b.iter(|| alone.analyse(&values).expect("stands"))
+        });
+        let mut whole = Analyst::new(&whole_list(tower.clone()));
+        group.bench_function("whole list, analysis", |b| {
+            b.iter(|| whole.analyse(&values).expect("stands"))
+        });
+        group.bench_function("whole list, full evaluation, every condition near", |b| {
+            b.iter(|| {
+                let response = whole.analyse(&values).expect("stands");
+                conditions(&whole, &response).expect("modes")
             })
         });
         group.finish();

@@ -202,3 +202,35 @@ fn faults_of_the_sections_are_told() {
     );
     assert!(faults.contains("one for each period, 2"), "{faults}");
 }
+
+#[test]
+fn the_annotated_tower_is_read_analysed_and_printed() {
+    let text = include_str!("towers/whole_list.toml");
+    let tower = parse_tower(text, "whole_list.toml")
+        .unwrap_or_else(|faults| panic!("{faults}"))
+        .tower;
+    let again = parse_tower(&full_form(&tower, ""), "again.toml")
+        .unwrap_or_else(|faults| panic!("{faults}"))
+        .tower;
+    assert_eq!(again, tower);
+    let (response, checks) = corewright::design::evaluate::examine(&tower).expect("it stands");
+    assert_eq!(response.cases.len(), 10);
+    // Every limit state of the list is there, and what rests on memory says so.
+    // (No group of walls has zones here, so there is nothing between them.)
+    let judged = |state: &&str| *state != "Buildability";
+    for state in corewright::checks::LIMIT_STATES.into_iter().filter(judged) {
+        assert!(
+            checks.iter().any(|check| check.limit_state == state),
+            "{state}"
+        );
+    }
+    let acceleration = &tower.limits.others[&Rule::Acceleration];
+    assert_eq!(
+        (acceleration.value, acceleration.source.as_str()),
+        (0.18, "project brief")
+    );
+    assert!(
+        checks.iter().all(|check| check.demand.is_finite()),
+        "{checks:?}"
+    );
+}

@@ -1522,7 +1522,7 @@ impl State {
                     continue;
                 };
                 let error = wrong[worst].abs() / most;
-                if !(error < SIX_DIGITS) {
+                if error.is_nan() || error >= SIX_DIGITS {
                     return Err(AnalysisError::NearMechanism {
                         freedom: freedoms.describe(worst, tower),
                         nearby: freedoms.nearby(worst, tower),

@@ -44,6 +44,7 @@ pub fn checks(tower: &Tower) -> Vec<Check> {
         // Judged as shown, so that rounding of sums never decides.
         let (demand, limit) = (millimetres(demand), millimetres(limit));
         Check {
+            limit_state: "",
             name: name.into(),
             clause: "tower file".into(),
             source: "stated in the tower file".into(),

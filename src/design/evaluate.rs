@@ -6,6 +6,7 @@ use super::cuts::CutMaker;
 use super::variables::Variables;
 use crate::analysis::analyst::{AnalysisError, Analyst, Response};
 use crate::analysis::inertia::Masses;
+use crate::checks::periods::Fundamental;
 use crate::checks::{Check, checks, conditions};
 use crate::model::sizes::Sizes;
 use crate::model::tower::Tower;
@@ -87,6 +88,25 @@ pub fn examine(tower: &Tower) -> Result<(Response, Vec<Check>), AnalysisError> {
     let response = Analyst::new(tower).analyse(&sizes.values(tower))?;
     let checks = checks(tower, &response)?;
     Ok((response, checks))
+}
+
+/// First periods in X, in Y and of twist (s) without P-delta, where `tower` asks
+/// for it: what code limits usually mean.
+///
+/// # Errors
+/// As [`examine`].
+pub fn first_order_periods(tower: &Tower) -> Result<Option<[f64; 3]>, AnalysisError> {
+    if !tower.actions.p_delta {
+        return Ok(None);
+    }
+    let mut stiff = tower.clone();
+    stiff.actions.p_delta = false;
+    let sizes = Sizes::of(&stiff);
+    let response = Analyst::new(&stiff).analyse(&sizes.values(&stiff))?;
+    let first = Fundamental::of(&response.modes)?;
+    Ok(Some(
+        [first.x, first.y, first.twist].map(|mode| mode.period),
+    ))
 }
 
 impl Problem for LayoutProblem {

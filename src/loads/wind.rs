@@ -335,7 +335,7 @@ mod tests {
         let speeds = [33.0, 39.0, 44.0, 47.0, 50.0, 55.0];
         for (years, printed, digits) in [
             (5.0, [0.82, 0.76, 0.73, 0.71, 0.70, 0.67], 0.0051),
-            // The table does not round these as its formula says.
+            // The formula with P = 0.63 lies up to 1.2 % off these rows of the table.
             (25.0, [0.94, 0.92, 0.91, 0.90, 0.90, 0.89], 0.0101),
             // 4 B in the formula stands for 3.918 B: up to 1.13 % short of one.
             (50.0, [1.0; 6], 0.0114),

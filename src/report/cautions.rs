@@ -5,8 +5,8 @@ pub const CAUTIONS: [&str; 4] = [
     "This is an aid for concept design. Local codes and a licensed engineer decide.",
     "Left out: out-of-plane bending of walls, frame action between slabs and walls, the \
      restraint that floors put on the Poisson effect in walls, construction sequence, creep and \
-     shrinkage, soil beyond the stated springs, P-delta, wind and earthquake actions beyond the \
-     storey forces given, and the design of members (reinforcement, connections, foundations).",
+     shrinkage, soil beyond the stated springs, P-delta and wind and earthquake actions beyond \
+     those given, and the design of members (reinforcement, connections, foundations).",
     "Limits, factors and clauses marked \"from memory\" are to be verified against the standard \
      before anyone relies on them.",
     "A search looks at many designs, not at all: a cheaper scheme may exist down to the lower \

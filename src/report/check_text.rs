@@ -26,10 +26,19 @@ pub fn check_text(report: &CheckReport) -> String {
 
     section(&mut text, "Modes");
     text.push_str(&modes(&report.results));
+    if let Some(periods) = &report.first_order_periods {
+        let _ = writeln!(
+            text,
+            "With P-delta. Without it: {} s in X, {} s in Y, {} s in twist.",
+            fixed(periods.x_s, 3),
+            fixed(periods.y_s, 3),
+            fixed(periods.twist_s, 3)
+        );
+    }
     section(&mut text, "Torsional period");
     text.push_str(&ratios(&report.results));
     section(&mut text, "Checks, worst first");
-    text.push_str(&checks(&report.results.checks_by_urgency()));
+    text.push_str(&grouped(&report.results.checks_by_urgency()));
     centres(&mut text, report);
     section(&mut text, "Concrete");
     text.push_str(&quantities(&report.quantities));
@@ -152,6 +161,35 @@ fn ratios(results: &Results) -> String {
         longer.0,
         fixed(results.ratio_to_longer, 3),
     )
+}
+
+/// Checks by limit state, the state with the worst check first. The few checks
+/// of a tower without a code of its own stand in one table.
+fn grouped(by_urgency: &[&CheckSummary]) -> String {
+    let few = ["Modes", "Drift", "Gravity", "Buildability"];
+    if by_urgency
+        .iter()
+        .all(|check| few.contains(&check.limit_state.as_ref()))
+    {
+        return checks(by_urgency);
+    }
+    let mut states: Vec<&str> = Vec::new();
+    for check in by_urgency {
+        if !states.contains(&check.limit_state.as_ref()) {
+            states.push(&check.limit_state);
+        }
+    }
+    let mut text = String::new();
+    for state in states {
+        let of_state: Vec<&CheckSummary> = by_urgency
+            .iter()
+            .copied()
+            .filter(|check| check.limit_state == state)
+            .collect();
+        section(&mut text, state);
+        text.push_str(&checks(&of_state));
+    }
+    text
 }
 
 /// Checks in the order given, with a letter for the clause of each limit and for

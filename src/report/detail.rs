@@ -133,6 +133,7 @@ pub struct ZoneSummary {
     pub size_mm: f64,
     pub given_mm: f64,
     /// What a search may do with it; none when locked.
+    #[serde(skip_serializing_if = "Option::is_none")]
     pub vary: Option<VarySummary>,
 }
 

@@ -12,6 +12,7 @@ use crate::analysis::analyst::{AnalysisError, Response};
 use crate::analysis::inertia::{Masses, Part};
 use crate::checks::periods::Fundamental;
 use crate::checks::{Check, all_pass, governing};
+use crate::design::evaluate::first_order_periods;
 use crate::model::sizes::Size;
 use crate::model::tower::{StoreyRange, Tower};
 use crate::schemes::conflict::Conflict;
@@ -72,6 +73,9 @@ pub struct CheckReport {
     pub verdict: String,
     #[serde(flatten)]
     pub results: Results,
+    /// Without P-delta, where the tower asks for it and the others have it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub first_order_periods: Option<Periods>,
     #[serde(flatten)]
     pub detail: Detail,
     pub quantities: QuantitySummary,
@@ -151,6 +155,9 @@ pub struct ModeSummary {
 
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct CheckSummary {
+    /// What the check guards.
+    #[serde(default)]
+    pub limit_state: Cow<'static, str>,
     pub name: String,
     pub clause: String,
     pub demand: f64,
@@ -168,6 +175,7 @@ pub struct CheckSummary {
 impl CheckSummary {
     pub fn of(check: &Check) -> Self {
         CheckSummary {
+            limit_state: Cow::Borrowed(check.limit_state),
             name: check.name.clone(),
             clause: check.clause.clone(),
             demand: check.demand,
@@ -294,6 +302,11 @@ impl CheckReport {
             status,
             verdict: words::verdict(&results.checks),
             results,
+            first_order_periods: first_order_periods(tower)?.map(|[x_s, y_s, twist_s]| Periods {
+                x_s,
+                y_s,
+                twist_s,
+            }),
             detail: Detail::of(tower, response),
             quantities: QuantitySummary::of(&examined.quantities, &response.masses),
             added_concrete_m3: examined.added_concrete,

@@ -8,6 +8,7 @@
 //! filter). "Finds nothing" is the verdict of a search, not a proof.
 
 use crate::checks::Check;
+use crate::codes::Rule;
 use crate::model::tower::{Limit, Limits, Tower};
 
 #[derive(Debug, Clone, PartialEq)]
@@ -18,46 +19,72 @@ pub struct Conflict {
     pub checks: Vec<&'static str>,
 }
 
-/// Kinds of check, by the limit that governs each.
-const KINDS: [&str; 7] = [
-    "torsional period ratio",
-    "translational period",
-    "wind storey drift",
-    "wind top drift",
-    "earthquake storey drift",
-    "wall axial stress",
-    "column axial stress",
-];
-
-fn limit(limits: &mut Limits, kind: usize) -> &mut Limit {
-    match kind {
-        0 => &mut limits.torsion_ratio,
-        1 => &mut limits.translation_period,
-        2 => &mut limits.wind_storey_drift,
-        3 => &mut limits.wind_top_drift,
-        4 => &mut limits.earthquake_storey_drift,
-        5 => &mut limits.wall_axial_stress,
-        _ => &mut limits.column_axial_stress,
+/// What a rule is called among the kinds of check.
+fn words(rule: Rule) -> &'static str {
+    match rule {
+        Rule::TorsionRatio => "torsional period ratio",
+        Rule::TranslationPeriod => "translational period",
+        Rule::WindStoreyDrift => "wind storey drift",
+        Rule::WindTopDrift => "wind top drift",
+        Rule::EarthquakeStoreyDrift => "earthquake storey drift",
+        Rule::WallAxialStress => "wall axial stress",
+        Rule::ColumnAxialStress => "column axial stress",
+        Rule::TorsionRatioToLonger => "torsional period ratio to the longer translational",
+        Rule::Acceleration => "acceleration",
+        Rule::EndToEnd => "end to end displacement",
+        Rule::EndToAverage => "end to average displacement",
+        Rule::SoftStorey => "soft storey",
+        Rule::ModeOrder => "order of modes",
+        Rule::PeriodCloseness => "closeness of translational periods",
+        Rule::CapturedMass => "captured mass",
+        Rule::TorsionalRadius => "torsional radius",
+        Rule::Eccentricity => "eccentricity",
+        Rule::PDeltaCoefficient => "P-delta coefficient",
+        Rule::CriticalLoadFactor => "critical load factor",
+        Rule::PlanAspect => "plan aspect",
+        Rule::WallThickness => "wall thickness",
+        Rule::ScopeHeight => "height the code covers",
+        Rule::SystemHeight => "height by system",
+        Rule::Slenderness => "slenderness",
     }
+}
+
+fn limit(limits: &mut Limits, rule: Rule) -> Option<&mut Limit> {
+    Some(match rule {
+        Rule::TorsionRatio => &mut limits.torsion_ratio,
+        Rule::TranslationPeriod => &mut limits.translation_period,
+        Rule::WindStoreyDrift => &mut limits.wind_storey_drift,
+        Rule::WindTopDrift => &mut limits.wind_top_drift,
+        Rule::EarthquakeStoreyDrift => &mut limits.earthquake_storey_drift,
+        Rule::WallAxialStress => &mut limits.wall_axial_stress,
+        Rule::ColumnAxialStress => &mut limits.column_axial_stress,
+        other => return limits.others.get_mut(&other),
+    })
 }
 
 /// Finds a conflict in the layout of `tower`; `passes` searches a tower and says
 /// whether a scheme was found.
 pub fn diagnose(tower: &Tower, failing: Vec<Check>, passes: impl Fn(&Tower) -> bool) -> Conflict {
     let mut trial = tower.clone();
-    let mut kept: Vec<usize> = Vec::new();
-    let judged: Vec<usize> = (0..KINDS.len())
-        .filter(|&kind| !limit(&mut trial.limits, kind).off)
+    let mut kept: Vec<Rule> = Vec::new();
+    let judged: Vec<Rule> = Rule::ALL
+        .into_iter()
+        .filter(|&rule| limit(&mut trial.limits, rule).is_some_and(|limit| !limit.off))
         .collect();
-    for &kind in &judged {
-        limit(&mut trial.limits, kind).off = true;
+    let switch = |trial: &mut Tower, rule: Rule, off: bool| {
+        if let Some(limit) = limit(&mut trial.limits, rule) {
+            limit.off = off;
+        }
+    };
+    for &rule in &judged {
+        switch(&mut trial, rule, true);
         if passes(&trial) {
-            limit(&mut trial.limits, kind).off = false;
-            kept.push(kind);
+            switch(&mut trial, rule, false);
+            kept.push(rule);
         }
     }
     Conflict {
         failing,
-        checks: kept.into_iter().map(|kind| KINDS[kind]).collect(),
+        checks: kept.into_iter().map(words).collect(),
     }
 }
