@@ -168,8 +168,8 @@ impl Reference {
         for j in 0..count {
             for k in 0..j {
                 let scaled = matrix[j][k] * matrix[k][k];
-                for i in j..count {
-                    matrix[i][j] = matrix[i][j] - matrix[i][k] * scaled;
+                for row in &mut matrix[j..] {
+                    row[j] = row[j] - row[k] * scaled;
                 }
             }
             let pivot = matrix[j][j];
