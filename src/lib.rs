@@ -17,6 +17,12 @@ pub mod blocktri;
 // Constrained, modular minimisation. Pure mathematics.
 pub mod search;
 
+// Codes of practice as data: limits, factors, tables.
+pub mod codes;
+
+// Wind and earthquake as formulas, with derivatives by period.
+pub mod loads;
+
 // What the engineer states, validated, in SI.
 pub mod model;
 

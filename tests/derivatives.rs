@@ -7,10 +7,14 @@ mod common;
 use common::*;
 use corewright::analysis::analyst::{Analyst, Response};
 use corewright::analysis::modes::Mode;
+use corewright::codes::Rule;
+use corewright::loads::spectrum::Soil;
 use corewright::model::sizes::Sizes;
 use corewright::model::tower::*;
 
 const STOREYS: usize = 8;
+/// Storeys whose P-delta coefficients are looked at.
+const P_DELTA: [usize; 2] = [1, 5];
 
 fn vary(min: f64, max: f64) -> Option<Vary> {
     Some(Vary {
@@ -169,6 +173,9 @@ fn everything(mass: StructureMass, base: Base) -> Tower {
     let mut along_y = case(Direction::Y, Action::Earthquake, forces);
     along_y.state = LimitState::Factored;
     tower.lateral_cases = vec![along_x, along_y];
+    // Asks for the coefficients of second order.
+    let limit = tower.limits.torsion_ratio.clone();
+    tower.limits.others.insert(Rule::PDeltaCoefficient, limit);
     tower
 }
 
@@ -190,6 +197,31 @@ fn quantities(response: &Response) -> Vec<(String, f64)> {
         for (end, drift) in case.top_drift.iter().enumerate() {
             list.push((format!("case {c} top drift end {end}"), *drift));
         }
+        for storey in P_DELTA {
+            let value = case.p_delta[storey - 1];
+            list.push((format!("case {c} P-delta of storey {storey}"), value));
+        }
+    }
+    for wind in &response.accelerations {
+        let name = format!("acceleration, wind along {:?}", wind.direction);
+        list.push((name, wind.combined()));
+    }
+    for (i, push) in response.pushes.iter().enumerate() {
+        for level in P_DELTA {
+            for end in 0..2 {
+                let name = format!("push {i} end {end} of level {level}");
+                list.push((name, push.ends[level - 1][end]));
+            }
+            let ratio = push.stiffness[level - 1] / push.stiffness[level];
+            list.push((format!("push {i} stiffness ratio of {level}"), ratio));
+        }
+    }
+    for radius in &response.torsional_radii {
+        let ratio = radius.radius / radius.gyration;
+        list.push((format!("torsional radius {:?}", radius.direction), ratio));
+    }
+    if let Some(buckling) = &response.buckling {
+        list.push(("critical load factor".to_string(), buckling.factor));
     }
     for stress in &response.stresses {
         let name = format!("stress in storey {} of {:?}", stress.storey, stress.support);
@@ -210,6 +242,21 @@ fn gradients(analyst: &Analyst, response: &Response) -> Vec<Vec<f64>> {
         }
         probes.extend([0, 1].map(|end| analyst.top_probe(case, end)));
         list.extend(analyst.drift_gradients(case, &probes));
+        let moved = &response.cases[case];
+        list.extend(P_DELTA.map(|storey| analyst.p_delta_gradient(case, storey, moved)));
+    }
+    list.extend(analyst.acceleration_gradients());
+    for push in 0..response.pushes.len() {
+        for level in P_DELTA {
+            list.extend(analyst.push_gradients(push, level));
+            list.push(analyst.stiffness_ratio_gradient(push, level));
+        }
+    }
+    for radius in &response.torsional_radii {
+        list.push(analyst.radius_gradient(radius));
+    }
+    if let Some(buckling) = &response.buckling {
+        list.push(analyst.buckling_gradient(buckling));
     }
     list.extend(
         response
@@ -311,6 +358,69 @@ fn all_gradients_with_changes_weighed_on_rotational_springs() {
 #[test]
 fn all_gradients_with_stated_masses_on_vertical_springs() {
     probe(&everything(StructureMass::None, vertical_springs(2e9)));
+}
+
+/// Wind and earthquake that follow the tower (invented numbers).
+fn actions(across: Option<f64>, p_delta: bool) -> Actions {
+    Actions {
+        wind: Some(Wind {
+            basic_speed: 44.0,
+            terrain_category: 2,
+            risk_factor: 1.0,
+            topography_factor: 1.1,
+            importance_factor: 1.0,
+            force_coefficients: [1.3, 1.2],
+            interference_factor: 1.07,
+            damping: 0.02,
+            across: across.map(|coefficient| AcrossWind {
+                spectrum_coefficient: Some(coefficient).filter(|given| *given > 0.0),
+                mode_exponent: 1.0,
+            }),
+            comfort_years: 10.0,
+            comfort_damping: 0.011,
+        }),
+        earthquake: Some(Earthquake {
+            spectrum: DesignSpectrum::Standard {
+                zone_factor: 0.24,
+                importance: 1.2,
+                reduction: 4.0,
+                soil: Soil::Medium,
+            },
+            damping: 0.05,
+            period: [ApproximatePeriod::Walls, ApproximatePeriod::Stated(0.9)],
+            minimum_shear: 0.016,
+            minimum_source: "invented".into(),
+            accidental_eccentricity: 0.05,
+            scale_drifts: true,
+            state: LimitState::Factored,
+        }),
+        p_delta,
+    }
+}
+
+#[test]
+fn all_gradients_where_forces_follow_the_tower() {
+    let mut tower = everything(StructureMass::All, Base::Fixed);
+    tower.lateral_cases.clear();
+    tower.actions = actions(Some(0.0), false);
+    let critical = tower.limits.torsion_ratio.clone();
+    tower
+        .limits
+        .others
+        .insert(Rule::CriticalLoadFactor, critical);
+    probe(&tower);
+}
+
+#[test]
+fn all_gradients_where_gravity_softens_the_tower() {
+    // Heavy floors, so that the softening shows.
+    let mut tower = everything(StructureMass::All, tilting_base());
+    for storey in &mut tower.storeys {
+        storey.floor.mass.mass *= 4.0;
+        storey.floor.mass.rotational_inertia *= 4.0;
+    }
+    tower.actions = actions(None, true);
+    probe(&tower);
 }
 
 #[test]

@@ -124,7 +124,8 @@ fn by_full_analysis(tower: &Tower) -> Vec<f64> {
             .map(|column| {
                 let zone = &tower.column_groups[column.group].zones[0];
                 let rigidity = storey.concrete.elastic_modulus * zone.width_x * zone.width_y;
-                let force = rigidity / storey.height * moved.up(1, column.node);
+                let stretch = moved.up(1, column.node) - moved.up(0, column.node);
+                let force = rigidity / storey.height * stretch;
                 force * (along(tower.position(column.node)) - first_moment / area)
             })
             .sum();
@@ -224,6 +225,32 @@ fn every_set_and_quantity_agrees_with_its_full_analysis() {
         assert_eq!(counts, sets, "{arms:?}");
         let worst = against_full_analyses(&map);
         println!("{arms:?}: periods {:.1e}, others {:.1e}", worst.0, worst.1);
+    }
+}
+
+#[test]
+fn springs_under_the_base_and_bending_columns_change_no_agreement() {
+    for base in [
+        vertical_springs(8e8),
+        Base::RotationalSprings {
+            about_x: 4e11,
+            about_y: 6e11,
+            centre: Point { x: 1.0, y: -0.5 },
+        },
+    ] {
+        let mut tower = lopsided(10);
+        tower.base = base;
+        for column in &mut tower.columns {
+            column.bends = true;
+        }
+        tower.outriggers.places = vec![
+            free_place(1, 1, 0.5),
+            free_place(4, 4, 0.7),
+            free_place(7, 8, 0.5),
+        ];
+        tower.belts.places = vec![free_place(4, 4, 0.3)];
+        let map = chart(&tower, &choice(Arms::Each, false, 3)).expect("a map");
+        against_full_analyses(&map);
     }
 }
 
@@ -397,4 +424,42 @@ fn the_least_thickness_is_the_first_that_passes_in_full_analyses() {
         }
     }
     assert!(found.len() > 2, "the limit tells sets apart: {found:?}");
+}
+
+#[test]
+fn a_search_starts_from_the_best_places() {
+    use corewright::schemes::layouts::{Layout, best_placed};
+    let mut tower = lopsided(12);
+    tower.outriggers.places = (2..=12).map(|k| free_place(k, k, 0.5)).collect();
+    tower.outriggers.max_places = 2;
+    tower.belts.places = vec![arm_place(4, 4, 0.3), free_place(9, 9, 0.3)];
+    tower.belts.max_places = 2;
+    let starts = best_placed(&tower);
+    let map = chart(&tower, &choice(Arms::Outriggers, false, 2)).expect("a map");
+    for position in map.responses() {
+        for best in map.bests(position) {
+            let set = map.by_size[best.size - 1].set(best.set);
+            let mut expected = Layout::of(&tower);
+            for (place, used) in expected.outriggers.iter_mut().enumerate() {
+                *used = set.contains(&place);
+            }
+            assert!(expected.belts[0], "belts stay as they stand");
+            assert!(starts.contains(&expected), "{expected:?}");
+        }
+    }
+    assert_eq!(starts, best_placed(&tower));
+}
+
+#[test]
+fn the_map_is_first_order_and_says_so() {
+    let mut tower = lopsided(10);
+    tower.outriggers.places = vec![free_place(5, 5, 0.5)];
+    tower.outriggers.max_places = 1;
+    let plain = chart(&tower, &choice(Arms::Outriggers, false, 1)).expect("a map");
+    assert!(plain.field.left_out.is_empty());
+    tower.actions.p_delta = true;
+    let map = chart(&tower, &choice(Arms::Outriggers, false, 1)).expect("a map");
+    assert_eq!(map.by_size, plain.by_size);
+    assert!(map.field.left_out[0].contains("P-delta"));
+    against_full_analyses(&map);
 }

@@ -98,6 +98,18 @@ impl Freedoms {
             .collect()
     }
 
+    /// Block of levels 1 to N, and the place of their floor freedoms in it.
+    pub fn floor_places(&self) -> Vec<(usize, usize)> {
+        let mut offsets = vec![0];
+        for size in &self.blocks {
+            offsets.push(offsets[offsets.len() - 1] + size);
+        }
+        self.levels[1..]
+            .iter()
+            .map(|level| (level.block, level.start - offsets[level.block]))
+            .collect()
+    }
+
     /// What the freedom `kind` of `level` is made of: local numbers within the
     /// level, with coefficients. Empty where the base holds it.
     pub fn locate<D: Scalar>(

@@ -154,7 +154,7 @@ pub struct Weighed {
 }
 
 /// Floor masses, members' concrete, and derivatives, at the sizes of a tower.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub struct Masses {
     /// One per level from 1 to N.
     pub floors: Vec<Inertia>,
@@ -331,6 +331,25 @@ impl Masses {
             gradient[*size] += derivative.product(&u[range.clone()], &v[range]);
         }
         gradient
+    }
+
+    /// Sum over `(level index, d inertia / d size)` of what `of` makes of it, for
+    /// every size.
+    pub fn gradient_by_level(&self, of: impl Fn(usize, &Inertia) -> f64) -> Vec<f64> {
+        let mut gradient = vec![0.0; self.size_count];
+        self.each_slope(|level, size, derivative| gradient[size] += of(level, derivative));
+        gradient
+    }
+
+    /// Calls `take` with level index (0 for level 1), size and derivative.
+    pub fn each_slope(&self, mut take: impl FnMut(usize, usize, &Inertia)) {
+        for (level, size, derivative) in &self.by_size {
+            take(*level, *size, derivative);
+        }
+    }
+
+    pub fn size_count(&self) -> usize {
+        self.size_count
     }
 
     /// Concrete of one kind of member, m3.

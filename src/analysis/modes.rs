@@ -46,7 +46,7 @@ pub struct Mode {
     pub captured: [f64; 3],
 }
 
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub struct Modes {
     /// Longest period first.
     pub list: Vec<Mode>,

@@ -40,6 +40,14 @@ impl DriftProbe {
         (at(self.upper) - at(self.lower)) / self.height
     }
 
+    /// Coefficients on the floor motions of levels 1 to N.
+    pub fn floors(&self, count: usize) -> Vec<f64> {
+        let mut coefficients = vec![0.0; 3 * count];
+        let numbers: Vec<usize> = (0..3 * count).collect();
+        self.write(&mut coefficients, &numbers);
+        coefficients
+    }
+
     /// Adds its coefficients to a vector over all freedoms.
     fn write(&self, target: &mut [f64], floor_numbers: &[usize]) {
         for (level, sign) in [(self.upper, 1.0), (self.lower, -1.0)] {

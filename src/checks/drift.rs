@@ -28,7 +28,8 @@ pub fn top_limit(tower: &Tower, action: Action) -> Option<&Limit> {
 
 pub fn checks(tower: &Tower, response: &Response) -> Vec<Check> {
     let mut checks = Vec::new();
-    for (case, moved) in tower.lateral_cases.iter().zip(&response.cases) {
+    for case in &response.cases {
+        let moved = case;
         let (storey, drift) = worst_storey(moved);
         checks.push(Check::new(
             format!("storey drift, {}", case.name),
@@ -61,9 +62,9 @@ fn worst_storey(moved: &CaseResponse) -> (usize, f64) {
 pub fn conditions(analyst: &Analyst, response: &Response) -> Vec<Condition> {
     let tower = analyst.tower();
     let mut conditions = Vec::new();
-    for (case, (lateral, moved)) in tower.lateral_cases.iter().zip(&response.cases).enumerate() {
+    for (case, moved) in response.cases.iter().enumerate() {
         let first = id::DRIFT + case * PER_CASE;
-        let limit = storey_limit(tower, lateral.action);
+        let limit = storey_limit(tower, moved.action);
         let mut wanted = Vec::new();
         if !limit.off {
             for (index, ends) in moved.storey_drift.iter().enumerate() {
@@ -79,7 +80,7 @@ pub fn conditions(analyst: &Analyst, response: &Response) -> Vec<Condition> {
             let keep = nearest.count().min(MOST);
             wanted.truncate(keep);
         }
-        if let Some(limit) = top_limit(tower, lateral.action).filter(|limit| !limit.off) {
+        if let Some(limit) = top_limit(tower, moved.action).filter(|limit| !limit.off) {
             for (end, &drift) in moved.top_drift.iter().enumerate() {
                 if drift.abs() >= NEAR * limit.value {
                     let probe = analyst.top_probe(case, end);

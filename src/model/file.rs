@@ -2,8 +2,12 @@
 //! own units, with the place of everything that a later rule may find fault
 //! with. Names are still names here; [`super::resolve`] turns them into indices.
 
+use std::collections::BTreeMap;
+
 use super::table::{At, Bound, Section, Storeys, bound};
-use super::tower::{Action, Direction, LimitState, OpenEnd, StructureMass};
+use super::tower::{Action, ApproximatePeriod, Direction, LimitState, OpenEnd, StructureMass};
+use crate::codes::{self, Occupancy, Rule};
+use crate::loads::spectrum::Soil;
 
 pub(super) const THICKNESS_MM: Bound = bound(80.0, 3000.0, "mm");
 pub(super) const DEPTH_MM: Bound = bound(80.0, 10_000.0, "mm");
@@ -13,6 +17,7 @@ const HEIGHT_M: Bound = bound(2.0, 15.0, "m");
 pub(super) const PLAN_M: Bound = bound(-10_000.0, 10_000.0, "m");
 const OFFSET_M: Bound = bound(-50.0, 50.0, "m");
 const LOAD_KPA: Bound = bound(0.0, 50.0, "kPa");
+const MARGIN: Bound = bound(0.0, 0.5, "share");
 pub(super) const FACTOR: Bound = bound(0.01, 1.0, "share");
 /// More storeys than any tower has; guards the memory of the analysis.
 pub(super) const MAX_STOREYS: usize = 1000;
@@ -21,6 +26,8 @@ pub(super) const MAX_STOREYS: usize = 1000;
 #[derive(Debug, Default)]
 pub(super) struct TowerText {
     pub at: At,
+    /// Place of `[tower]`.
+    pub tower_at: At,
     pub name: String,
     pub question: String,
     pub reference_m: Option<(f64, f64)>,
@@ -46,7 +53,55 @@ pub(super) struct TowerText {
     pub cracking: CrackingText,
     pub lateral_cases: Vec<CaseText>,
     pub limits_at: At,
-    pub limits: Vec<LimitText>,
+    /// By rule; rules that the file does not name are absent.
+    pub limits: BTreeMap<Rule, LimitText>,
+    /// Margin of all limits that state none of their own.
+    pub margin_share: Option<f64>,
+    pub code: CodeText,
+    pub wind: Option<WindText>,
+    pub earthquake: Option<EarthquakeText>,
+    pub p_delta: bool,
+}
+
+#[derive(Debug)]
+pub(super) struct WindText {
+    pub basic_speed_m_s: f64,
+    pub terrain_category: u8,
+    pub risk_factor: f64,
+    pub topography_factor: f64,
+    pub importance_factor: f64,
+    pub force_coefficients: [f64; 2],
+    pub interference_factor: f64,
+    pub damping: f64,
+    /// Spectrum coefficient, exponent of the mode.
+    pub across: Option<(Option<f64>, f64)>,
+    pub comfort_years: f64,
+    pub comfort_damping: f64,
+}
+
+#[derive(Debug)]
+pub(super) struct EarthquakeText {
+    pub zone: Option<&'static str>,
+    pub zone_factor: Option<f64>,
+    pub importance_factor: Option<f64>,
+    pub response_reduction: Option<f64>,
+    pub soil: Option<Soil>,
+    /// Place, periods (s), accelerations (g).
+    pub spectrum: Option<(At, Vec<f64>, Vec<f64>)>,
+    pub damping: f64,
+    pub period: [ApproximatePeriod; 2],
+    pub minimum_shear_share: Option<f64>,
+    pub accidental_eccentricity: f64,
+    pub scale_drifts: bool,
+    pub state: Option<LimitState>,
+}
+
+/// Which code, and what its limits depend on.
+#[derive(Debug, Default)]
+pub(super) struct CodeText {
+    pub id: Option<&'static str>,
+    pub system: Option<String>,
+    pub occupancy: Option<Occupancy>,
 }
 
 #[derive(Debug)]
@@ -304,100 +359,58 @@ pub(super) struct RunText {
     pub ends: (f64, f64),
 }
 
-/// How the number of a limit is written.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) enum LimitKind {
-    /// `limit`, a ratio.
-    Ratio,
-    /// `limit_s`
-    Seconds,
-    /// `limit_h_over`, the reciprocal of a drift ratio.
-    HeightOver,
-    /// `limit_share` of the concrete's strength.
-    Share,
-}
-
-impl LimitKind {
-    pub fn key(self) -> &'static str {
-        match self {
-            LimitKind::Ratio => "limit",
-            LimitKind::Seconds => "limit_s",
-            LimitKind::HeightOver => "limit_h_over",
-            LimitKind::Share => "limit_share",
-        }
-    }
-
-    fn bound(self) -> Bound {
-        match self {
-            LimitKind::Ratio => bound(0.1, 10.0, ""),
-            LimitKind::Seconds => bound(0.1, 100.0, "s"),
-            LimitKind::HeightOver => bound(20.0, 10_000.0, "height over drift"),
-            LimitKind::Share => bound(0.01, 1.0, "share"),
-        }
-    }
-
-    /// From the file's number to the model's.
-    pub fn value(self, number: f64) -> f64 {
-        if self == LimitKind::HeightOver {
-            1.0 / number
-        } else {
-            number
-        }
+/// How the number of a limit is written: its key, and its range.
+pub(super) fn limit_key(rule: Rule) -> &'static str {
+    use Rule::*;
+    match rule {
+        TranslationPeriod => "limit_s",
+        WindStoreyDrift | WindTopDrift | EarthquakeStoreyDrift => "limit_h_over",
+        WallAxialStress | ColumnAxialStress => "limit_share",
+        WallThickness => "limit_mm",
+        ScopeHeight | SystemHeight => "limit_m",
+        Acceleration => "limit_m_s2",
+        _ => "limit",
     }
 }
 
-/// Key, kind, default in the file's number, clause. All recalled, not seen.
-pub(super) const LIMITS: [(&str, LimitKind, f64, &str); 7] = [
-    (
-        "torsion_ratio",
-        LimitKind::Ratio,
-        0.9,
-        "IS 16700:2017 5.5.1",
-    ),
-    (
-        "translation_period",
-        LimitKind::Seconds,
-        8.0,
-        "IS 16700:2017 5.5.2",
-    ),
-    (
-        "wind_storey_drift",
-        LimitKind::HeightOver,
-        500.0,
-        "IS 16700:2017 5.4.1",
-    ),
-    (
-        "wind_top_drift",
-        LimitKind::HeightOver,
-        500.0,
-        "IS 16700:2017 5.4.1",
-    ),
-    (
-        "earthquake_storey_drift",
-        LimitKind::HeightOver,
-        250.0,
-        "IS 16700:2017 5.4.1",
-    ),
-    (
-        "wall_axial_stress",
-        LimitKind::Share,
-        0.25,
-        "common practice",
-    ),
-    (
-        "column_axial_stress",
-        LimitKind::Share,
-        0.40,
-        "common practice",
-    ),
-];
+fn limit_bound(rule: Rule) -> Bound {
+    match limit_key(rule) {
+        "limit_s" => bound(0.1, 100.0, "s"),
+        "limit_h_over" => bound(20.0, 10_000.0, "height over drift"),
+        "limit_share" => bound(0.01, 1.0, "share"),
+        "limit_mm" => bound(50.0, 2000.0, "mm"),
+        "limit_m" => bound(1.0, 2000.0, "m"),
+        "limit_m_s2" => bound(0.001, 10.0, "m/s2"),
+        _ if rule.is_base() => bound(0.1, 10.0, ""),
+        _ => bound(0.001, 100.0, ""),
+    }
+}
 
-/// What a file says about one of [`LIMITS`].
-#[derive(Debug, Default)]
+/// From the file's number to the model's.
+pub(super) fn limit_value(rule: Rule, number: f64) -> f64 {
+    match limit_key(rule) {
+        "limit_h_over" => 1.0 / number,
+        "limit_mm" => number / 1e3,
+        _ => number,
+    }
+}
+
+/// The file's number for a limit of the model.
+pub(super) fn limit_number(rule: Rule, value: f64) -> f64 {
+    match limit_key(rule) {
+        "limit_h_over" => 1.0 / value,
+        "limit_mm" => value * 1e3,
+        _ => value,
+    }
+}
+
+/// What a file says about one rule.
+#[derive(Debug, Default, Clone)]
 pub(super) struct LimitText {
     pub number: Option<f64>,
     pub clause: Option<String>,
     pub source: Option<String>,
+    pub margin_share: Option<f64>,
     pub off: bool,
 }
 
@@ -410,9 +423,25 @@ pub(super) fn read_document(document: &Section<'_>) -> TowerText {
     };
     match document.section("tower") {
         Some(section) => {
+            text.tower_at = section.at.clone();
             text.name = section.need_text("name");
             text.question = section.text("question").unwrap_or_default();
             text.reference_m = section.pair("reference_m", PLAN_M);
+            let codes: Vec<_> = codes::all()
+                .iter()
+                .map(|code| (code.id.as_str(), code.id.as_str()))
+                .collect();
+            text.code = CodeText {
+                id: section.choice("code", &codes),
+                system: section.text("system"),
+                occupancy: section.choice(
+                    "occupancy",
+                    &[
+                        ("residential", Occupancy::Residential),
+                        ("commercial", Occupancy::Commercial),
+                    ],
+                ),
+            };
             section.finish();
         }
         None if document.has("tower") => {}
@@ -525,18 +554,28 @@ pub(super) fn read_document(document: &Section<'_>) -> TowerText {
         .map(read_cracking)
         .unwrap_or_default();
     text.lateral_cases = each(document, "lateral_cases", read_case);
+    text.wind = document.section("wind").map(read_wind);
+    text.earthquake = document.section("earthquake").map(read_earthquake);
+    if let Some(section) = document.section("analysis") {
+        text.p_delta = section.boolean("p_delta").unwrap_or(false);
+        section.finish();
+    }
     text.limits_at = document.at.key("limits");
-    text.limits = LIMITS.iter().map(|_| LimitText::default()).collect();
     if let Some(section) = document.section("limits") {
         text.limits_at = section.at.clone();
-        for ((key, kind, ..), limit) in LIMITS.iter().zip(&mut text.limits) {
-            if let Some(section) = section.section_like(key, &format!("{{ {} = ... }}", kind.key()))
-            {
-                limit.number = section.number(kind.key(), kind.bound());
-                limit.clause = section.text("clause");
-                limit.source = section.text("source");
-                limit.off = section.boolean("off").unwrap_or(false);
+        text.margin_share = section.number("margin_share", MARGIN);
+        for rule in Rule::ALL {
+            let key = limit_key(rule);
+            if let Some(section) = section.section_like(rule.key(), &format!("{{ {key} = ... }}")) {
+                let limit = LimitText {
+                    number: section.number(key, limit_bound(rule)),
+                    clause: section.text("clause"),
+                    source: section.text("source"),
+                    margin_share: section.number("margin_share", MARGIN),
+                    off: section.boolean("off").unwrap_or(false),
+                };
                 section.finish();
+                text.limits.insert(rule, limit);
             }
         }
         section.finish();
@@ -897,6 +936,117 @@ fn read_state(section: &Section<'_>, key: &'static str) -> Option<LimitState> {
             ("factored", LimitState::Factored),
         ],
     )
+}
+
+fn read_wind(section: Section<'_>) -> WindText {
+    let share = bound(0.001, 0.2, "share");
+    let factor =
+        |key, low, high, default| section.number(key, bound(low, high, "")).unwrap_or(default);
+    let coefficient = bound(0.1, 5.0, "");
+    if !section.has("terrain_category") {
+        section.miss("terrain_category", "a whole number, 1 to 4");
+    }
+    let text = WindText {
+        basic_speed_m_s: section.need_number("basic_speed_m_s", bound(10.0, 100.0, "m/s")),
+        terrain_category: section.whole("terrain_category", 1, 4).unwrap_or(1) as u8,
+        risk_factor: factor("risk_factor", 0.5, 1.5, 1.0),
+        topography_factor: factor("topography_factor", 1.0, 2.0, 1.0),
+        importance_factor: factor("importance_factor", 1.0, 1.5, 1.0),
+        force_coefficients: [
+            section.need_number("force_coefficient_x", coefficient),
+            section.need_number("force_coefficient_y", coefficient),
+        ],
+        interference_factor: factor("interference_factor", 1.0, 2.0, 1.0),
+        damping: section.number("damping", share).unwrap_or(0.02),
+        across: section.section("across").map(|across| {
+            let read = (
+                across.number("spectrum_coefficient", bound(1e-6, 1.0, "")),
+                across
+                    .number("mode_exponent", bound(0.5, 2.5, ""))
+                    .unwrap_or(1.5),
+            );
+            across.finish();
+            read
+        }),
+        comfort_years: section
+            .number("comfort_years", bound(1.0, 100.0, "years"))
+            .unwrap_or(10.0),
+        comfort_damping: section.number("comfort_damping", share).unwrap_or(0.011),
+    };
+    section.finish();
+    text
+}
+
+fn read_earthquake(section: Section<'_>) -> EarthquakeText {
+    let zones = ["II", "III", "IV", "V"].map(|zone| (zone, zone));
+    let kinds = [
+        ("other", ApproximatePeriod::Other),
+        ("frame", ApproximatePeriod::Frame),
+        ("walls", ApproximatePeriod::Walls),
+    ];
+    let kind = section
+        .choice("approximate_period", &kinds)
+        .unwrap_or(ApproximatePeriod::Other);
+    let period = |key| {
+        section
+            .number(key, bound(0.05, 100.0, "s"))
+            .map_or(kind, ApproximatePeriod::Stated)
+    };
+    let table = section.section("spectrum");
+    if table.is_none() && !section.has("spectrum") {
+        if !section.has("zone") && !section.has("zone_factor") {
+            section.miss(
+                "zone",
+                "\"II\", \"III\", \"IV\" or \"V\", or a spectrum of its own",
+            );
+        }
+        if !section.has("response_reduction") {
+            section.miss("response_reduction", "1 to 8");
+        }
+        if !section.has("soil") {
+            section.miss("soil", "\"I\", \"II\" or \"III\"");
+        }
+    }
+    let text = EarthquakeText {
+        zone: section.choice("zone", &zones),
+        zone_factor: section.number("zone_factor", bound(0.01, 2.0, "")),
+        importance_factor: section.number("importance_factor", bound(0.5, 2.0, "")),
+        response_reduction: section.number("response_reduction", bound(1.0, 8.0, "")),
+        soil: section.choice(
+            "soil",
+            &[("I", Soil::Hard), ("II", Soil::Medium), ("III", Soil::Soft)],
+        ),
+        spectrum: table.map(|table| {
+            let list = |key, bound| {
+                if !table.has(key) {
+                    table.miss(key, "a list of numbers");
+                }
+                table.numbers(key, bound).unwrap_or_default()
+            };
+            let read = (
+                table.at.clone(),
+                list("period_s", bound(0.0, 100.0, "s")),
+                list("acceleration_g", bound(0.0, 10.0, "g")),
+            );
+            table.finish();
+            read
+        }),
+        damping: section
+            .number("damping", bound(0.001, 0.3, "share"))
+            .unwrap_or(0.05),
+        period: [
+            period("approximate_period_x_s"),
+            period("approximate_period_y_s"),
+        ],
+        minimum_shear_share: section.number("minimum_shear_share", bound(0.0, 0.5, "share")),
+        accidental_eccentricity: section
+            .number("accidental_eccentricity", bound(0.0, 0.3, "share"))
+            .unwrap_or(0.05),
+        scale_drifts: section.boolean("scale_drifts").unwrap_or(false),
+        state: read_state(&section, "state"),
+    };
+    section.finish();
+    text
 }
 
 fn read_case(section: &Section<'_>) -> CaseText {

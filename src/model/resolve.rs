@@ -8,6 +8,9 @@ use std::collections::{BTreeMap, HashMap};
 use super::file::*;
 use super::table::{At, Log, Storeys, nearest};
 use super::tower::*;
+use crate::codes::{self, Code, Conditions, Occupancy, Rule, SectionFactors, Sense};
+use crate::loads::seismic;
+use crate::loads::spectrum::{Soil, Table};
 
 /// The model, and where in the file each of its members stands.
 pub(super) struct Resolved {
@@ -47,11 +50,8 @@ pub(super) struct ArmPlaces {
 /// reported; the member stays, so that its neighbours are not blamed for its absence.
 const UNKNOWN: usize = usize::MAX;
 
-const CRACKING_SOURCE: &str = "IS 16700:2017 7.2 Table 6, from memory";
 pub(super) const STATED: &str = "stated in the tower file";
 pub(super) const MODULUS_SOURCE: &str = "IS 456:2000 6.2.3.1";
-const DEFAULT_UNFACTORED: [f64; 6] = [0.9, 1.0, 0.9, 0.7, 0.7, 0.9];
-const DEFAULT_FACTORED: [f64; 6] = [0.7, 1.0, 0.7, 0.35, 0.35, 0.7];
 
 /// Share of the imposed load (Pa) that counts as mass: IS 1893 (Part 1):2016
 /// 7.3.1, from memory.
@@ -130,27 +130,6 @@ pub(super) fn torque_of(
     };
     // Rounded through the file's unit, so that the sum can be printed exactly.
     (stated + added) / 1e3 * 1e3
-}
-
-pub(super) fn limits_from(values: [Limit; 7]) -> Limits {
-    let [
-        torsion_ratio,
-        translation_period,
-        wind_storey_drift,
-        wind_top_drift,
-        earthquake_storey_drift,
-        wall_axial_stress,
-        column_axial_stress,
-    ] = values;
-    Limits {
-        torsion_ratio,
-        translation_period,
-        wind_storey_drift,
-        wind_top_drift,
-        earthquake_storey_drift,
-        wall_axial_stress,
-        column_axial_stress,
-    }
 }
 
 /// Ids of one kind, with their indices.
@@ -516,6 +495,10 @@ impl Resolver<'_> {
         let core = self.core(text.core.as_ref(), &node_names, &mut nodes);
         let base = self.base(&text.base, &node_names, reference);
         let lateral_cases = self.lateral_cases(text);
+        let choice = self.code(text);
+        let code = codes::find(&choice.id).expect("the reader offers bundled codes only");
+        let height = storeys.iter().map(|storey| storey.height).sum();
+        let limits = limits(text, &choice, code, height);
 
         Tower {
             name: text.name.clone(),
@@ -536,11 +519,13 @@ impl Resolver<'_> {
             options,
             core,
             base,
-            cracking: cracking(&text.cracking),
+            cracking: cracking(&text.cracking, code),
             period_state: text.cracking.period_state.unwrap_or(LimitState::Unfactored),
             structure_mass: self.structure_mass(text),
             lateral_cases,
-            limits: limits(&text.limits),
+            limits,
+            actions: self.actions(text, code, height),
+            code: choice,
         }
     }
 
@@ -1077,6 +1062,120 @@ impl Resolver<'_> {
         }
     }
 
+    fn code(&self, text: &TowerText) -> CodeChoice {
+        let stated = text.code.id;
+        let code = stated
+            .and_then(codes::find)
+            .unwrap_or(codes::default_code());
+        if let (Some(system), Some(table)) = (&text.code.system, &code.height)
+            && !table.systems.contains_key(system)
+        {
+            let known: Vec<String> = table
+                .systems
+                .keys()
+                .map(|name| format!("\"{name}\""))
+                .collect();
+            self.log.fault(
+                &text.tower_at.key("system"),
+                format!("\"{system}\""),
+                known.join(", "),
+            );
+        }
+        CodeChoice {
+            id: code.id.clone(),
+            stated: stated.is_some(),
+            system: text.code.system.clone(),
+            zone: text
+                .earthquake
+                .as_ref()
+                .and_then(|earthquake| earthquake.zone)
+                .map(str::to_owned),
+            occupancy: text.code.occupancy.unwrap_or(Occupancy::Residential),
+        }
+    }
+
+    fn actions(&self, text: &TowerText, code: &Code, height: f64) -> Actions {
+        Actions {
+            wind: text.wind.as_ref().map(|wind| Wind {
+                basic_speed: wind.basic_speed_m_s,
+                terrain_category: wind.terrain_category,
+                risk_factor: wind.risk_factor,
+                topography_factor: wind.topography_factor,
+                importance_factor: wind.importance_factor,
+                force_coefficients: wind.force_coefficients,
+                interference_factor: wind.interference_factor,
+                damping: wind.damping,
+                across: wind
+                    .across
+                    .map(|(spectrum_coefficient, mode_exponent)| AcrossWind {
+                        spectrum_coefficient,
+                        mode_exponent,
+                    }),
+                comfort_years: wind.comfort_years,
+                comfort_damping: wind.comfort_damping,
+            }),
+            earthquake: text
+                .earthquake
+                .as_ref()
+                .map(|earthquake| self.earthquake(earthquake, code, height)),
+            p_delta: text.p_delta,
+        }
+    }
+
+    fn earthquake(&self, text: &EarthquakeText, code: &Code, height: f64) -> Earthquake {
+        let spectrum = match &text.spectrum {
+            Some((at, periods, accelerations)) => {
+                if periods.len() != accelerations.len() || periods.is_empty() {
+                    self.log.fault(
+                        &at.key("acceleration_g"),
+                        format!("{} numbers", accelerations.len()),
+                        format!("one for each period, {}", periods.len().max(1)),
+                    );
+                }
+                if !periods.windows(2).all(|pair| pair[0] < pair[1]) {
+                    self.log.fault(
+                        &at.key("period_s"),
+                        "periods out of order",
+                        "periods that grow",
+                    );
+                }
+                let points = periods.iter().copied().zip(accelerations.iter().copied());
+                DesignSpectrum::Table(Table {
+                    points: points.collect(),
+                })
+            }
+            None => DesignSpectrum::Standard {
+                zone_factor: text
+                    .zone_factor
+                    .or(text.zone.and_then(seismic::zone_factor))
+                    .unwrap_or(f64::NAN),
+                importance: text.importance_factor.unwrap_or(1.0),
+                reduction: text.response_reduction.unwrap_or(f64::NAN),
+                soil: text.soil.unwrap_or(Soil::Medium),
+            },
+        };
+        let table = code.minimum_shear.as_ref().zip(text.zone);
+        let found = table.and_then(|(table, zone)| {
+            let share = table.at(zone, height)?;
+            Some((share, format!("{}, {}", table.clause, table.known)))
+        });
+        let (minimum_shear, minimum_source) = match (text.minimum_shear_share, found) {
+            (Some(share), _) => (share, STATED.to_owned()),
+            (None, Some(found)) => found,
+            (None, None) => (0.0, "none".to_owned()),
+        };
+        Earthquake {
+            spectrum,
+            damping: text.damping,
+            period: text.period,
+            minimum_shear,
+            minimum_source,
+            accidental_eccentricity: text.accidental_eccentricity,
+            scale_drifts: text.scale_drifts,
+            state: text.state.unwrap_or(LimitState::Factored),
+        }
+    }
+
     fn lateral_cases(&self, text: &TowerText) -> Vec<LateralCase> {
         let cases = &text.lateral_cases;
         Names::new(
@@ -1250,48 +1349,101 @@ fn concrete_of(zone: &ConcreteText) -> Concrete {
     }
 }
 
-fn cracking(text: &CrackingText) -> Cracking {
-    let factors = |stated: &[Option<f64>; 6], default: [f64; 6]| {
-        let value = |index: usize| stated[index].unwrap_or(default[index]);
-        Factors {
-            walls: value(0),
-            wall_shear: value(1),
-            columns: value(2),
-            beams: value(3),
-            links: value(4),
-            arms: value(5),
-        }
+fn cracking(text: &CrackingText, code: &Code) -> Cracking {
+    let factors = |stated: &[Option<f64>; 6], default: &SectionFactors| Factors {
+        walls: stated[0].unwrap_or(default.walls),
+        wall_shear: stated[1].unwrap_or(default.wall_shear),
+        columns: stated[2].unwrap_or(default.columns),
+        beams: stated[3].unwrap_or(default.beams),
+        links: stated[4].unwrap_or(default.links),
+        arms: stated[5].unwrap_or(default.arms),
     };
     let stated = text
         .unfactored
         .iter()
         .chain(&text.factored)
         .any(Option::is_some);
+    let default = if stated {
+        STATED
+    } else {
+        &code.cracking.source
+    };
     Cracking {
-        unfactored: factors(&text.unfactored, DEFAULT_UNFACTORED),
-        factored: factors(&text.factored, DEFAULT_FACTORED),
-        source: text
-            .source
-            .clone()
-            .unwrap_or_else(|| if stated { STATED } else { CRACKING_SOURCE }.to_owned()),
+        unfactored: factors(&text.unfactored, &code.cracking.unfactored),
+        factored: factors(&text.factored, &code.cracking.factored),
+        source: text.source.clone().unwrap_or_else(|| default.to_owned()),
     }
 }
 
-fn limits(text: &[LimitText]) -> Limits {
-    let mut index = 0;
-    limits_from(LIMITS.map(|(_, kind, default, clause)| {
-        let text = &text[index];
-        index += 1;
-        let source = match (&text.source, text.number) {
-            (Some(source), _) => source.clone(),
-            (None, Some(_)) => STATED.to_owned(),
-            (None, None) => "from memory".to_owned(),
+/// Limits of the code, as far as the file does not state its own. Rules beyond
+/// the seven that every tower is held to come in where the file names them, or
+/// all that the code has where it names the code.
+fn limits(text: &TowerText, choice: &CodeChoice, code: &Code, height: f64) -> Limits {
+    let conditions = Conditions {
+        height,
+        occupancy: choice.occupancy,
+        system: choice.system.as_deref(),
+        zone: choice.zone.as_deref(),
+    };
+    let limit = |rule: Rule| -> Option<Limit> {
+        let written = text.limits.get(&rule).cloned().unwrap_or_default();
+        let found = code.limit(rule, &conditions);
+        let number = written.number.or(found.as_ref().map(|found| found.limit));
+        // A rule that the code lacks can only be kept out of the list.
+        let (number, lacking) = match number {
+            Some(number) => (number, false),
+            None if rule.is_base() => {
+                let shown = codes::default_code().limit(rule, &conditions);
+                (
+                    shown.expect("the default code has the base rules").limit,
+                    true,
+                )
+            }
+            None => return None,
         };
-        Limit {
-            value: kind.value(text.number.unwrap_or(default)),
-            clause: text.clause.clone().unwrap_or_else(|| clause.to_owned()),
+        let source = match (written.source, written.number) {
+            (Some(source), _) => source,
+            (None, Some(_)) => STATED.to_owned(),
+            (None, None) => match &found {
+                Some(found) => found.known.clone(),
+                None => format!("{} has no such rule", code.title),
+            },
+        };
+        let clause = written.clause.or(found.map(|found| found.clause));
+        let margin = written.margin_share.or(text.margin_share).unwrap_or(0.0);
+        Some(Limit {
+            value: with_margin(rule, limit_value(rule, number), margin),
+            margin,
+            clause: clause.unwrap_or_else(|| {
+                let none = if lacking { "none in " } else { "beside " };
+                format!("{none}{}", code.title)
+            }),
             source,
-            off: text.off,
-        }
-    }))
+            off: written.off || lacking,
+        })
+    };
+    let base = |rule: Rule| limit(rule).expect("a base rule has a limit");
+    Limits {
+        torsion_ratio: base(Rule::TorsionRatio),
+        translation_period: base(Rule::TranslationPeriod),
+        wind_storey_drift: base(Rule::WindStoreyDrift),
+        wind_top_drift: base(Rule::WindTopDrift),
+        earthquake_storey_drift: base(Rule::EarthquakeStoreyDrift),
+        wall_axial_stress: base(Rule::WallAxialStress),
+        column_axial_stress: base(Rule::ColumnAxialStress),
+        others: Rule::ALL
+            .into_iter()
+            .filter(|rule| !rule.is_base())
+            .filter(|rule| choice.stated || text.limits.contains_key(rule))
+            .filter_map(|rule| limit(rule).map(|limit| (rule, limit)))
+            .collect(),
+    }
+}
+
+/// A limit made stricter by `margin`.
+pub(super) fn with_margin(rule: Rule, value: f64, margin: f64) -> f64 {
+    match rule.sense() {
+        Sense::AtMost => value * (1.0 - margin),
+        Sense::AtLeast => value / (1.0 - margin),
+    }
 }

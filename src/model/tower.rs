@@ -8,6 +8,9 @@
 
 use std::collections::BTreeMap;
 
+use crate::codes::{Occupancy, Rule};
+use crate::loads::spectrum::{Soil, Table};
+
 /// Standard gravity, m/s2 (ISO 80000-3, conventional value).
 pub const GRAVITY: f64 = 9.806_65;
 
@@ -44,6 +47,124 @@ pub struct Tower {
     pub structure_mass: StructureMass,
     pub lateral_cases: Vec<LateralCase>,
     pub limits: Limits,
+    /// Code of practice, and what its limits depend on.
+    pub code: CodeChoice,
+    pub actions: Actions,
+}
+
+/// Actions whose forces follow the tower itself.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Actions {
+    pub wind: Option<Wind>,
+    pub earthquake: Option<Earthquake>,
+    /// Whether gravity softens the tower: periods and drifts then are those of
+    /// second order.
+    pub p_delta: bool,
+}
+
+/// Wind of IS 875 (Part 3):2015 by the gust-factor method.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Wind {
+    /// 3 s gust, 50 years, m/s.
+    pub basic_speed: f64,
+    /// 1 to 4
+    pub terrain_category: u8,
+    /// k1, k3, k4
+    pub risk_factor: f64,
+    pub topography_factor: f64,
+    pub importance_factor: f64,
+    /// For wind along X and along Y.
+    pub force_coefficients: [f64; 2],
+    /// On all wind forces, for tall neighbours (8.3).
+    pub interference_factor: f64,
+    /// Share of critical, for forces.
+    pub damping: f64,
+    pub across: Option<AcrossWind>,
+    /// Mean return period of the wind under which comfort is judged, years.
+    pub comfort_years: f64,
+    /// Share of critical, for comfort.
+    pub comfort_damping: f64,
+}
+
+/// Forces across the wind (10.3).
+#[derive(Debug, Clone, PartialEq)]
+pub struct AcrossWind {
+    /// Spectrum coefficient; `None` takes it from readings of the standard's
+    /// chart for square towers.
+    pub spectrum_coefficient: Option<f64>,
+    /// Of the mode's shape.
+    pub mode_exponent: f64,
+}
+
+/// Earthquake by response spectrum, both directions.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Earthquake {
+    pub spectrum: DesignSpectrum,
+    /// Share of critical, for the correlation of modes.
+    pub damping: f64,
+    /// Period that the static base shear goes by, X and Y.
+    pub period: [ApproximatePeriod; 2],
+    /// Least base shear over weight; zero where none is wanted.
+    pub minimum_shear: f64,
+    /// Where [`Earthquake::minimum_shear`] comes from.
+    pub minimum_source: String,
+    /// Share of the plan width across the motion.
+    pub accidental_eccentricity: f64,
+    /// Whether drifts are scaled up with the base shear.
+    pub scale_drifts: bool,
+    pub state: LimitState,
+}
+
+#[derive(Debug, Clone, PartialEq)]
+pub enum DesignSpectrum {
+    /// IS 1893 (Part 1):2016 6.4.2.
+    Standard {
+        zone_factor: f64,
+        importance: f64,
+        reduction: f64,
+        soil: Soil,
+    },
+    /// Design acceleration as it is, g.
+    Table(Table),
+}
+
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum ApproximatePeriod {
+    /// s
+    Stated(f64),
+    /// `0.09 h/sqrt(d)`
+    Other,
+    /// `0.075 h^0.75`
+    Frame,
+    /// By the area of the walls of the first storey.
+    Walls,
+}
+
+/// Which code the limits come from.
+#[derive(Debug, Clone, PartialEq)]
+pub struct CodeChoice {
+    /// Id of one of [`crate::codes::all`].
+    pub id: String,
+    /// Whether the tower names the code itself and so asks for its whole check
+    /// list; otherwise the code only supplies what was not stated.
+    pub stated: bool,
+    /// Structural system, as the code's tables call it.
+    pub system: Option<String>,
+    /// Seismic zone, as the code's tables call it.
+    pub zone: Option<String>,
+    pub occupancy: Occupancy,
+}
+
+impl Default for CodeChoice {
+    fn default() -> Self {
+        CodeChoice {
+            id: crate::codes::DEFAULT.to_owned(),
+            stated: false,
+            system: None,
+            zone: None,
+            occupancy: Occupancy::Residential,
+        }
+    }
 }
 
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -90,6 +211,15 @@ pub struct Extent {
     pub x_max: f64,
     pub y_min: f64,
     pub y_max: f64,
+}
+
+impl Extent {
+    pub fn centre(&self) -> Point {
+        Point {
+            x: 0.5 * (self.x_min + self.x_max),
+            y: 0.5 * (self.y_min + self.y_max),
+        }
+    }
 }
 
 /// Mass of a floor before the structure that [`StructureMass`] adds.
@@ -424,7 +554,10 @@ pub struct LateralCase {
 /// A limit of a check, with its pedigree.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Limit {
+    /// What the demand is held against, margin taken off.
     pub value: f64,
+    /// Share that the engineer keeps in hand; `value` is stricter by it.
+    pub margin: f64,
     pub clause: String,
     /// How the value is known ("from memory", "seen in ...", "stated in the tower file").
     pub source: String,
@@ -449,6 +582,8 @@ pub struct Limits {
     pub wall_axial_stress: Limit,
     /// Gravity axial stress in columns as a share of concrete strength.
     pub column_axial_stress: Limit,
+    /// Further rules that the code or the engineer asks for.
+    pub others: BTreeMap<Rule, Limit>,
 }
 
 impl Tower {

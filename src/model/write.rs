@@ -3,12 +3,14 @@
 use std::fmt::{Display, Write};
 use std::ops::Range;
 
-use super::file::{FACTOR_KEYS, LIMITS, LimitKind};
+use super::file::{FACTOR_KEYS, limit_key, limit_number, limit_value};
 use super::resolve::{
-    MODULUS_SOURCE, along_run, centre, dead_of_mass, default_imposed_share, mass_of_loads,
-    torque_of, uniform_inertia,
+    MODULUS_SOURCE, STATED, along_run, centre, dead_of_mass, default_imposed_share, mass_of_loads,
+    torque_of, uniform_inertia, with_margin,
 };
 use super::tower::*;
+use crate::codes::{Occupancy, Rule, Sense};
+use crate::loads::spectrum::Soil;
 
 /// The tower in full form, in TOML; [`super::read::parse_tower`] reads it back
 /// to an equal tower.
@@ -40,6 +42,7 @@ pub fn full_form(tower: &Tower, comment: &str) -> String {
     page.base(tower);
     page.cracking(tower);
     page.lateral_cases(tower);
+    page.actions(tower);
     page.limits(tower);
     page.text
 }
@@ -93,6 +96,16 @@ impl Page {
         // The default is left out, since halves of sums may need all digits.
         if tower.reference != centre(tower.storeys[0].floor.extent) {
             self.key("reference_m", point(tower.reference));
+        }
+        let code = &tower.code;
+        if code.stated {
+            self.key("code", quoted(&code.id));
+        }
+        if let Some(system) = &code.system {
+            self.key("system", quoted(system));
+        }
+        if code.occupancy == Occupancy::Commercial {
+            self.key("occupancy", quoted("commercial"));
         }
         self.head("[mass]");
         let structure = match tower.structure_mass {
@@ -510,35 +523,136 @@ impl Page {
         }
     }
 
+    fn actions(&mut self, tower: &Tower) {
+        let actions = &tower.actions;
+        if let Some(wind) = &actions.wind {
+            self.head("[wind]");
+            self.key("basic_speed_m_s", plain(wind.basic_speed));
+            self.key("terrain_category", wind.terrain_category);
+            self.key("risk_factor", plain(wind.risk_factor));
+            self.key("topography_factor", plain(wind.topography_factor));
+            self.key("importance_factor", plain(wind.importance_factor));
+            self.key("force_coefficient_x", plain(wind.force_coefficients[0]));
+            self.key("force_coefficient_y", plain(wind.force_coefficients[1]));
+            self.key("interference_factor", plain(wind.interference_factor));
+            self.key("damping", plain(wind.damping));
+            self.key("comfort_years", plain(wind.comfort_years));
+            self.key("comfort_damping", plain(wind.comfort_damping));
+            if let Some(across) = &wind.across {
+                let exponent = plain(across.mode_exponent);
+                let item = match across.spectrum_coefficient {
+                    Some(given) => format!(
+                        "{{ spectrum_coefficient = {}, mode_exponent = {exponent} }}",
+                        plain(given)
+                    ),
+                    None => format!("{{ mode_exponent = {exponent} }}"),
+                };
+                self.key("across", item);
+            }
+        }
+        if let Some(earthquake) = &actions.earthquake {
+            self.head("[earthquake]");
+            if let Some(zone) = &tower.code.zone {
+                self.key("zone", quoted(zone));
+            }
+            match &earthquake.spectrum {
+                DesignSpectrum::Standard {
+                    zone_factor,
+                    importance,
+                    reduction,
+                    soil,
+                } => {
+                    self.key("zone_factor", plain(*zone_factor));
+                    self.key("importance_factor", plain(*importance));
+                    self.key("response_reduction", plain(*reduction));
+                    let soil = match soil {
+                        Soil::Hard => "I",
+                        Soil::Medium => "II",
+                        Soil::Soft => "III",
+                    };
+                    self.key("soil", quoted(soil));
+                }
+                DesignSpectrum::Table(table) => {
+                    let list = |number: fn(&(f64, f64)) -> f64| {
+                        let numbers: Vec<String> = table
+                            .points
+                            .iter()
+                            .map(|point| plain(number(point)))
+                            .collect();
+                        format!("[{}]", numbers.join(", "))
+                    };
+                    let item = format!(
+                        "{{ period_s = {}, acceleration_g = {} }}",
+                        list(|point| point.0),
+                        list(|point| point.1)
+                    );
+                    self.key("spectrum", item);
+                }
+            }
+            self.key("damping", plain(earthquake.damping));
+            for (axis, period) in ["x", "y"].iter().zip(&earthquake.period) {
+                if let ApproximatePeriod::Stated(period) = period {
+                    self.key(&format!("approximate_period_{axis}_s"), plain(*period));
+                }
+            }
+            let kind = earthquake.period.iter().find_map(|period| match period {
+                ApproximatePeriod::Stated(_) => None,
+                ApproximatePeriod::Other => Some("other"),
+                ApproximatePeriod::Frame => Some("frame"),
+                ApproximatePeriod::Walls => Some("walls"),
+            });
+            if let Some(kind) = kind {
+                self.key("approximate_period", quoted(kind));
+            }
+            if earthquake.minimum_source == STATED {
+                self.key("minimum_shear_share", plain(earthquake.minimum_shear));
+            }
+            self.key(
+                "accidental_eccentricity",
+                plain(earthquake.accidental_eccentricity),
+            );
+            self.key("scale_drifts", earthquake.scale_drifts);
+            self.key("state", state(earthquake.state));
+        }
+        if actions.p_delta {
+            self.head("[analysis]");
+            self.key("p_delta", true);
+        }
+    }
+
     fn limits(&mut self, tower: &Tower) {
         self.head("[limits]");
         let limits = &tower.limits;
-        let values = [
-            &limits.torsion_ratio,
-            &limits.translation_period,
-            &limits.wind_storey_drift,
-            &limits.wind_top_drift,
-            &limits.earthquake_storey_drift,
-            &limits.wall_axial_stress,
-            &limits.column_axial_stress,
+        let base = [
+            (Rule::TorsionRatio, &limits.torsion_ratio),
+            (Rule::TranslationPeriod, &limits.translation_period),
+            (Rule::WindStoreyDrift, &limits.wind_storey_drift),
+            (Rule::WindTopDrift, &limits.wind_top_drift),
+            (Rule::EarthquakeStoreyDrift, &limits.earthquake_storey_drift),
+            (Rule::WallAxialStress, &limits.wall_axial_stress),
+            (Rule::ColumnAxialStress, &limits.column_axial_stress),
         ];
-        for ((key, kind, ..), limit) in LIMITS.iter().zip(values) {
-            let guess = if *kind == LimitKind::HeightOver {
-                1.0 / limit.value
-            } else {
-                limit.value
+        let others = limits.others.iter().map(|(rule, limit)| (*rule, limit));
+        for (rule, limit) in base.into_iter().chain(others) {
+            let read = |number: f64| with_margin(rule, limit_value(rule, number), limit.margin);
+            let guess = match rule.sense() {
+                Sense::AtMost => limit.value / (1.0 - limit.margin),
+                Sense::AtLeast => limit.value * (1.0 - limit.margin),
             };
-            let number = brief(limit.value, guess, |number| kind.value(number));
+            let number = brief(limit.value, limit_number(rule, guess), read);
             let mut item = format!(
                 "{} = {number}, clause = {}, source = {}",
-                kind.key(),
+                limit_key(rule),
                 quoted(&limit.clause),
                 quoted(&limit.source)
             );
+            if limit.margin != 0.0 {
+                item.push_str(&format!(", margin_share = {}", plain(limit.margin)));
+            }
             if limit.off {
                 item.push_str(", off = true");
             }
-            self.key(key, format!("{{ {item} }}"));
+            self.key(rule.key(), format!("{{ {item} }}"));
         }
     }
 }

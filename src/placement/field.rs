@@ -9,12 +9,12 @@ use crate::analysis::members::{arms_at, walls_in};
 use crate::analysis::stiffness::{plan_nodes, reading};
 use crate::elements::{Member, Row};
 use crate::model::sizes::Sizes;
-use crate::model::tower::{ArmPlace, ArmSystem, StoreyRange, StructureMass, Tower};
+use crate::model::tower::{Actions, ArmPlace, ArmSystem, StoreyRange, StructureMass, Tower};
 
 /// Most places in a set.
 pub const MOST_LEVELS: usize = 4;
 /// Most sets in a map; a hundred bytes and more each.
-pub const MOST_SETS: usize = 2_000_000;
+pub const MOST_SETS: usize = 1_000_000;
 
 /// Why there is no map.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -45,9 +45,9 @@ pub enum Arms {
 }
 
 impl Arms {
-    /// Outriggers where the tower has any, else belts.
+    /// Outriggers, or belts where there are belts alone.
     pub fn usual(tower: &Tower) -> Self {
-        if tower.outriggers.arms.is_empty() {
+        if tower.outriggers.arms.is_empty() && !tower.belts.arms.is_empty() {
             Arms::Belts
         } else {
             Arms::Outriggers
@@ -122,13 +122,13 @@ impl Candidate {
 /// The places to choose from, and the tower without them.
 #[derive(Debug, Clone)]
 pub struct Field {
-    /// With every candidate among its places; all are out of use, save those
-    /// that are locked in use.
+    /// With every candidate among its places, out of use like all places of the
+    /// kinds chosen that are not locked in use. Other kinds stand as they stood.
     pub tower: Tower,
     /// From below upward.
     pub candidates: Vec<Candidate>,
     pub choice: Choice,
-    /// Storeys that candidates could not have, and why; for people.
+    /// What could not be chosen, or only for information, and why; for people.
     pub left_out: Vec<String>,
 }
 
@@ -146,6 +146,17 @@ impl Field {
         }
         let mut base = tower.clone();
         let mut left_out = Vec::new();
+        // Forces that follow from mass and period, and second order, are not
+        // linear in the added rows.
+        if base.actions != Actions::default() {
+            base.actions = Actions::default();
+            left_out.push(
+                "the map takes the storey forces stated in the tower file, first order: wind and \
+                 earthquake worked out from a code, and P-delta, are left aside; check the set \
+                 you choose"
+                    .to_owned(),
+            );
+        }
         if choice.all_storeys {
             let depths: BTreeSet<usize> = [
                 (choice.arms.outriggers(), &tower.outriggers),
@@ -170,13 +181,23 @@ impl Field {
                 }
             }
         }
-        for place in base
-            .outriggers
-            .places
-            .iter_mut()
-            .chain(&mut base.belts.places)
-        {
-            place.in_use &= place.locked;
+        for (chosen, system) in [
+            (choice.arms.outriggers(), &mut base.outriggers),
+            (choice.arms.belts(), &mut base.belts),
+        ] {
+            if !chosen {
+                continue;
+            }
+            for place in &mut system.places {
+                place.in_use &= place.locked;
+            }
+            let left = system.max_places.saturating_sub(in_use(system));
+            if choice.levels > left {
+                left_out.push(format!(
+                    "the tower file allows {left} more places of one kind at a time; larger sets \
+                     are for information"
+                ));
+            }
         }
 
         let mut usable = |system: &ArmSystem, name: &str| -> Vec<usize> {
@@ -346,6 +367,11 @@ impl Field {
             .map(|candidate| addition(&self.tower, &sizes, candidate))
             .collect()
     }
+}
+
+/// Places in use.
+pub fn in_use(system: &ArmSystem) -> usize {
+    system.places.iter().filter(|place| place.in_use).count()
 }
 
 /// A place over `storeys`, unless there is one, as thick as the first place.

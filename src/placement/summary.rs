@@ -136,10 +136,10 @@ impl Map {
         let mut worst = [0.0_f64; 2];
         for (position, quantity) in self.quantities.iter().enumerate() {
             let (kind, expected) = match *quantity {
-                Quantity::TopDrift(case) => (1, full.1[case].0),
-                Quantity::StoreyDrift(case) => (1, full.1[case].1),
+                Quantity::TopDrift(case) => (1, full.drifts[case].0),
+                Quantity::StoreyDrift(case) => (1, full.drifts[case].1),
                 Quantity::CoreMoment(_) | Quantity::Concrete | Quantity::StoreysFilled => continue,
-                _ => (0, full.0[position]),
+                _ => (0, full.periods[position]),
             };
             let off = (sets.value(set, position) / expected - 1.0).abs();
             // A comparison with NaN must not pass for agreement.
@@ -163,9 +163,14 @@ pub struct Verification {
     pub drifts: f64,
 }
 
-/// Periods and ratios in the order of [`Quantity::all`]; top drift and worst
-/// storey drift by case.
-fn full_values(response: &Response) -> Result<([f64; 5], Vec<(f64, f64)>), AnalysisError> {
+struct FullValues {
+    /// Periods and ratios in the order of [`Quantity::all`].
+    periods: [f64; 5],
+    /// Top drift and worst storey drift by case.
+    drifts: Vec<(f64, f64)>,
+}
+
+fn full_values(response: &Response) -> Result<FullValues, AnalysisError> {
     let first = Fundamental::of(&response.modes)?;
     let largest = |values: &mut dyn Iterator<Item = f64>| values.map(f64::abs).fold(0.0, f64::max);
     let drifts = response
@@ -185,5 +190,5 @@ fn full_values(response: &Response) -> Result<([f64; 5], Vec<(f64, f64)>), Analy
         first.ratio_to_smaller(),
         first.ratio_to_longer(),
     ];
-    Ok((periods, drifts))
+    Ok(FullValues { periods, drifts })
 }

@@ -3,6 +3,9 @@
 /// Most decimals that [`against`] spends on telling a demand from its limit.
 const MOST_DECIMALS: usize = 9;
 
+/// Slopes smaller than this are rounding, in any unit that is shown.
+const NOTHING: f64 = 1e-8;
+
 /// `value` with `decimals` places, never "-0".
 pub fn fixed(value: f64, decimals: usize) -> String {
     let text = format!("{value:.decimals$}");
@@ -43,7 +46,7 @@ fn amount_decimals(value: f64) -> usize {
 
 /// A small number with its sign, to `digits` significant digits.
 pub fn signed_significant(value: f64, digits: usize) -> String {
-    if value == 0.0 {
+    if value.abs() < NOTHING {
         return "0".to_owned();
     }
     let magnitude = value.abs().log10().floor();

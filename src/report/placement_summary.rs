@@ -42,6 +42,8 @@ pub struct PlacementReport {
     pub arms: &'static str,
     pub all_storeys: bool,
     pub thickness: &'static str,
+    #[serde(skip)]
+    pub least_thickness: bool,
     pub places: Vec<PlaceSummary>,
     /// Storeys or systems without a place, and why.
     pub left_out: Vec<String>,
@@ -154,6 +156,7 @@ impl PlacementReport {
                 Thickness::AsGiven => "as given",
                 Thickness::Least => "least that meets the limits",
             },
+            least_thickness: map.field.choice.thickness == Thickness::Least,
             places: places(map),
             left_out: map.field.left_out.clone(),
             sets: map.by_size.iter().map(Sets::len).collect(),

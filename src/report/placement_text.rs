@@ -3,7 +3,7 @@
 
 use super::check_text::{heading, notes, push, section};
 use super::numbers::{fixed, signed, thousands};
-use super::placement_summary::{PlacementReport, place_name};
+use super::placement_summary::{PlacementReport, QuantityMap, place_name};
 use super::tables::{Column, lines, table, wrapped};
 use crate::placement::map::{Map, Quantity};
 use crate::placement::summary::LEEWAY;
@@ -63,6 +63,14 @@ pub fn placement_text(report: &PlacementReport, map: &Map, drawn: &Drawn) -> Str
         );
         push(&mut text, &wrapped(&line, 0));
     }
+    section(
+        &mut text,
+        &format!(
+            "Leeway: sets within {} % of the best, and the storeys that each of their places takes",
+            fixed(100.0 * LEEWAY, 0)
+        ),
+    );
+    text.push_str(&leeway(report));
     notes(
         &mut text,
         "Where best for the period and best for drift differ",
@@ -87,7 +95,7 @@ pub fn placement_text(report: &PlacementReport, map: &Map, drawn: &Drawn) -> Str
     );
     push(&mut text, &wrapped(&line, 0));
     notes(&mut text, "What is modelled", &report.modelled);
-    notes(&mut text, "Places left out", &report.left_out);
+    notes(&mut text, "Places", &report.left_out);
     notes(&mut text, "Noticed in the tower file", &report.warnings);
     notes(&mut text, "Cautions", &report.cautions);
     text
@@ -104,29 +112,35 @@ fn shown(value: f64, unit: &str) -> String {
     }
 }
 
+/// Quantities that sets change and that are not zero without any: fewest storeys
+/// and least concrete are no news.
+fn told(report: &PlacementReport) -> impl Iterator<Item = &QuantityMap> {
+    let told = |quantity: &&QuantityMap| quantity.moved && quantity.without != Some(0.0);
+    report.quantities.iter().filter(told)
+}
+
 fn bests(report: &PlacementReport) -> String {
-    let mut table = table(&[
+    let least = report.least_thickness;
+    let mut heads = vec![
         ("quantity", Column::Text),
         ("places", Column::Number),
         ("best", Column::Number),
         ("storeys", Column::Text),
         ("against none %", Column::Number),
-        ("last one %", Column::Number),
+        ("last one buys %", Column::Number),
         ("ratio", Column::Number),
-        ("sets in leeway", Column::Number),
-        ("leeway, storeys", Column::Text),
-    ]);
-    for quantity in report.quantities.iter().filter(|quantity| quantity.moved) {
-        // Fewest storeys and least concrete are no news.
-        if quantity.without == Some(0.0) {
-            continue;
-        }
+    ];
+    if least {
+        heads.push(("thickness x", Column::Number));
+    }
+    let mut table = table(&heads);
+    for quantity in told(report) {
         let without = quantity
             .without
             .map_or_else(|| "-".to_owned(), |value| shown(value, quantity.unit));
         table.add_row([quantity.name.as_str(), "0", without.as_str()]);
         for best in &quantity.bests {
-            table.add_row([
+            let mut row = vec![
                 String::new(),
                 best.places.len().to_string(),
                 shown(best.value, quantity.unit),
@@ -135,6 +149,33 @@ fn bests(report: &PlacementReport) -> String {
                 signed(best.further_change_percent, 1),
                 best.ratio_to_smaller
                     .map_or_else(String::new, |ratio| fixed(ratio, 3)),
+            ];
+            if least {
+                row.push(fixed(best.thickness_factor, 2));
+            }
+            table.add_row(row);
+        }
+    }
+    lines(&table)
+}
+
+fn leeway(report: &PlacementReport) -> String {
+    let mut table = table(&[
+        ("quantity", Column::Text),
+        ("places", Column::Number),
+        ("sets", Column::Number),
+        ("lowest place; next; ...", Column::Text),
+    ]);
+    for quantity in told(report) {
+        for best in &quantity.bests {
+            let name = if best.places.len() == 1 {
+                quantity.name.as_str()
+            } else {
+                ""
+            };
+            table.add_row([
+                name.to_owned(),
+                best.places.len().to_string(),
                 thousands(best.near_best as f64),
                 best.leeway.join("; "),
             ]);
@@ -201,7 +242,7 @@ fn maps(text: &mut String, report: &PlacementReport, map: &Map, drawn: &Drawn) {
     }
     section(
         text,
-        "Maps of pairs: the upper place from the left margin, the lower one from the foot",
+        "Maps of pairs: one place from the left margin, the other from the foot (its first storey)",
     );
     let key = format!(
         "'*' best, '+' within {} %; 0 to 9: tenths of the way from the best to the worst pair; \
@@ -216,7 +257,7 @@ fn maps(text: &mut String, report: &PlacementReport, map: &Map, drawn: &Drawn) {
     }
 }
 
-/// A triangle of characters, a row for each upper place, highest first.
+/// A triangle of characters, each pair once; the highest place in the first row.
 pub fn pair_map(map: &Map, position: usize) -> String {
     let Some(sets) = map.by_size.get(1).filter(|sets| !sets.is_empty()) else {
         return String::new();
@@ -229,6 +270,20 @@ pub fn pair_map(map: &Map, position: usize) -> String {
     };
     let least = value(best);
     let most = known.map(value).fold(least, f64::max);
+    // Places of one kind and depth side by side, so that each block is a map of levels.
+    let mut order: Vec<usize> = (0..count).collect();
+    order.sort_by_key(|&index| {
+        let candidate = &map.field.candidates[index];
+        (
+            candidate.outrigger.is_none(),
+            candidate.last - candidate.first,
+            candidate.first,
+        )
+    });
+    let mut rank = vec![0; count];
+    for (position, &index) in order.iter().enumerate() {
+        rank[index] = position;
+    }
     let mut cells = vec![b' '; count * count];
     for set in 0..sets.len() {
         let members = sets.set(set);
@@ -241,12 +296,11 @@ pub fn pair_map(map: &Map, position: usize) -> String {
         } else {
             b'0' + (10.0 * (value(set) - least) / (most - least)).min(9.0) as u8
         };
-        cells[members[1] * count + members[0]] = mark;
+        let (a, b) = (rank[members[0]], rank[members[1]]);
+        cells[a.max(b) * count + a.min(b)] = mark;
     }
-    let names: Vec<String> = map
-        .field
-        .candidates
-        .iter()
+    let in_order = || order.iter().map(|&index| &map.field.candidates[index]);
+    let names: Vec<String> = in_order()
         .map(|candidate| place_name(map, candidate))
         .collect();
     let width = names.iter().map(String::len).max().unwrap_or(0);
@@ -257,13 +311,16 @@ pub fn pair_map(map: &Map, position: usize) -> String {
         text.push_str(line.trim_end());
         text.push('\n');
     }
-    // Names of the lower places, read downward.
-    for digit in 0..width {
-        let row: String = names[..count - 1]
+    // First storeys at the foot, read downward.
+    let firsts: Vec<String> = in_order()
+        .map(|candidate| candidate.first.to_string())
+        .collect();
+    let digits = firsts.iter().map(String::len).max().unwrap_or(0);
+    for digit in 0..digits {
+        let row: String = firsts[..count - 1]
             .iter()
             .map(|name| {
-                let from = width - name.len();
-                let at = digit.checked_sub(from);
+                let at = digit.checked_sub(digits - name.len());
                 at.and_then(|at| name.chars().nth(at)).unwrap_or(' ')
             })
             .collect();

@@ -1,6 +1,8 @@
 //! Layouts: which outrigger and belt places and which options are in use.
 
 use crate::model::tower::{ArmSystem, Tower};
+use crate::placement::field::{Arms, Choice, Field, Thickness};
+use crate::placement::map::chart;
 
 /// The choices of one layout, in the order of the tower's own lists.
 #[derive(Debug, Clone, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -187,6 +189,58 @@ fn count_sets(system: &ArmSystem) -> f64 {
         ways.push(by_number);
     }
     total
+}
+
+/// Places in a screened set, at most.
+const SCREENED_PLACES: usize = 3;
+/// Sets that may be screened before a search, at most.
+const SCREENED_SETS: usize = 10_000;
+
+/// Layouts that put arms where the map of all sets of places, at the sizes of
+/// `tower`, finds them best by some quantity: outriggers with the belts as they
+/// stand, then belts with the outriggers as they stand. Empty where there is
+/// nothing to choose or no map.
+pub fn best_placed(tower: &Tower) -> Vec<Layout> {
+    let mut found: Vec<Layout> = Vec::new();
+    for (arms, system) in [
+        (Arms::Outriggers, &tower.outriggers),
+        (Arms::Belts, &tower.belts),
+    ] {
+        if system.arms.is_empty() {
+            continue;
+        }
+        let locked = system
+            .places
+            .iter()
+            .filter(|place| place.locked && place.in_use);
+        let free = system.max_places.saturating_sub(locked.count());
+        // Fewer places where sets are too many to look at beside the search.
+        let map = (1..=free.min(SCREENED_PLACES)).rev().find_map(|levels| {
+            let choice = Choice {
+                arms,
+                all_storeys: false,
+                levels,
+                thickness: Thickness::AsGiven,
+            };
+            let field = Field::of(tower, &choice).ok()?;
+            let few = (1..=levels).all(|size| {
+                let sets = field.sets(size);
+                sets.is_ok_and(|members| members.len() / size <= SCREENED_SETS)
+            });
+            few.then(|| chart(tower, &choice).ok()).flatten()
+        });
+        let Some(map) = map else { continue };
+        for position in map.responses() {
+            for best in map.bests(position) {
+                let set = map.by_size[best.size - 1].set(best.set);
+                let layout = Layout::of(&map.field.with(&set, 1.0));
+                if !found.contains(&layout) {
+                    found.push(layout);
+                }
+            }
+        }
+    }
+    found
 }
 
 /// Every layout of the space, or `None` when there are more than `most`.

@@ -4,7 +4,8 @@
 //! 1. *Screen.* Each layout's sizes are relaxed from modules and a few steps of
 //!    the gradient search show what it can do. Spaces of up to
 //!    [`Settings::screen_all`] layouts are screened whole; in larger ones a tree
-//!    grows from the given layout and from a few random ones: the best layouts
+//!    grows from the given layout, from those that the map of arm places finds
+//!    best by some quantity, and from a few random ones: the best layouts
 //!    of each generation have their neighbours screened, until none improves.
 //! 2. *Search.* The best layouts are searched to the end, in modules.
 //! 3. *Vary.* The best schemes are searched again with one of the groups that
@@ -27,8 +28,8 @@ use super::rank::pick;
 use super::scheme::Scheme;
 use crate::analysis::analyst::AnalysisError;
 use crate::analysis::inertia::Part;
-use crate::checks::Check;
-use crate::design::evaluate::{LayoutProblem, concrete};
+use crate::checks::{Check, all_pass};
+use crate::design::evaluate::{LayoutProblem, concrete, examine};
 use crate::model::tower::Tower;
 use crate::search;
 use crate::search::outcome::{Outcome, Point};
@@ -387,6 +388,7 @@ impl Run<'_> {
         let mut random = Xoshiro256PlusPlus::seed_from_u64(self.settings.seed);
         let home = Layout::of(self.tower);
         let mut generation: Vec<Layout> = vec![home.clone()];
+        generation.extend(layouts::best_placed(self.tower));
         for _ in 0..RANDOM_STARTS {
             let mut layout = home.clone();
             for _ in 0..random.random_range(1..=4) {
@@ -530,8 +532,35 @@ impl Run<'_> {
             .fetch_add(towers.len(), Ordering::Relaxed);
         towers
             .into_par_iter()
-            .filter_map(|tower| Scheme::of(tower).ok())
+            .filter_map(|tower| Scheme::of(self.settled(tower)).ok())
             .collect()
+    }
+
+    /// `tower` with its core moved no farther than it must be to pass: an offset
+    /// costs no concrete, so that a search leaves it anywhere.
+    fn settled(&self, mut tower: Tower) -> Tower {
+        for axis in [0, 1] {
+            let core = &tower.core;
+            let (now, given, vary) = [
+                (core.x, core.given_x, core.vary_x),
+                (core.y, core.given_y, core.vary_y),
+            ][axis];
+            let Some(vary) = vary.filter(|_| now != given) else {
+                continue;
+            };
+            let steps = ((now - given).abs() / vary.module).round() as usize;
+            for step in 0..steps {
+                let mut nearer = tower.clone();
+                let offset = given + step as f64 * vary.module * (now - given).signum();
+                *[&mut nearer.core.x, &mut nearer.core.y][axis] = offset;
+                self.ledger.analyses.fetch_add(1, Ordering::Relaxed);
+                if examine(&nearer).is_ok_and(|(_, checks)| all_pass(&checks)) {
+                    tower = nearer;
+                    break;
+                }
+            }
+        }
+        tower
     }
 
     /// `proving`: analyses that may go into raising the lower bound.

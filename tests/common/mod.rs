@@ -199,6 +199,7 @@ pub fn equal_storeys(count: usize, height: f64, mass: f64, inertia: f64) -> Towe
     };
     let limit = |value: f64| Limit {
         value,
+        margin: 0.0,
         clause: "test".into(),
         source: "invented".into(),
         off: false,
@@ -245,7 +246,10 @@ pub fn equal_storeys(count: usize, height: f64, mass: f64, inertia: f64) -> Towe
             earthquake_storey_drift: limit(0.004),
             wall_axial_stress: limit(0.25),
             column_axial_stress: limit(0.4),
+            others: BTreeMap::new(),
         },
+        code: CodeChoice::default(),
+        actions: Actions::default(),
     }
 }
 

@@ -54,6 +54,7 @@ def main():
         ("closed_form", ["make.py"]),
         ("eigen", ["make_cantilever.py"]),
         ("eigen", ["solve_modes.py", "cantilever"]),
+        ("spectrum", ["make_reference.py"]),
         ("membrane", ["make_reference.py", *membrane]),
     ]
     passed = failed = 0
