@@ -11,6 +11,8 @@
 //! search. [`schemes`] runs layouts side by side and ranks what they give;
 //! [`report`] writes it for people and programs.
 
+#![forbid(unsafe_code)]
+
 // Block-tridiagonal matrices: factor, solve, flexibility, modes. Pure mathematics.
 pub mod blocktri;
 

@@ -1,5 +1,7 @@
 //! The command line of corewright; everything it does is in `cli`.
 
+#![forbid(unsafe_code)]
+
 mod cli;
 
 use std::process::ExitCode;

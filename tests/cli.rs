@@ -594,7 +594,8 @@ mod signals {
         let report = desk.schemes("out");
         assert_eq!(report["ended"], "interrupted");
         let schemes = report["schemes"].as_array().unwrap();
-        assert_eq!(desk.names("out").len(), schemes.len() + 2);
+        // Schemes, the two tables, and the journal to resume from.
+        assert_eq!(desk.names("out").len(), schemes.len() + 3);
         for scheme in schemes {
             let file = format!("out/{}", scheme["file"].as_str().unwrap());
             let (code, ..) = desk.run(&["check", &file]);

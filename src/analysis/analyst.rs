@@ -31,11 +31,23 @@ use crate::model::tower::{Action, Actions, Direction, GRAVITY, LimitState, Point
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 pub enum AnalysisError {
     #[error(
-        "the tower can move without resistance: {freedom} ({state}); check that every part below is connected and supported"
+        "the tower can move without resistance: {freedom} ({state}); there: {nearby}; check that they hold it and are connected and supported below"
     )]
     Mechanism {
         freedom: String,
+        /// Members at the freedom, by name.
+        nearby: String,
         state: &'static str,
+    },
+    #[error(
+        "the tower can move almost without resistance: {freedom} ({state}) gives {share:.0e} times as far as the stiffest, beyond what can be told from rounding; there: {nearby}; check that they hold it and are connected and supported below"
+    )]
+    NearMechanism {
+        freedom: String,
+        nearby: String,
+        state: &'static str,
+        /// Largest flexibility over smallest.
+        share: f64,
     },
     #[error(
         "the tower buckles under its own gravity load ({state}); stiffen it, or leave p_delta off to see its critical load factor"
@@ -253,6 +265,9 @@ struct State {
 
 /// Modes looked at beyond those reported, so that captured mass can be reached.
 const MOST_MODES: usize = 60;
+/// Softest over stiffest flexibility beyond which modes that cannot be found are
+/// blamed on it.
+const TOO_SOFT: f64 = 1e8;
 
 impl Analyst {
     /// For the present layout of `tower`.
@@ -350,7 +365,8 @@ impl Analyst {
         let flexibility = &self.states[0].flexibility;
         let matrices = masses.matrices();
         let count = MOST_MODES.min(self.floor_numbers.len());
-        let pairs = modes_from_flexibility(flexibility, &matrices, count)?;
+        let pairs = modes_from_flexibility(flexibility, &matrices, count)
+            .map_err(|error| self.too_soft(&masses).unwrap_or_else(|| error.into()))?;
         let modes = Modes::from_pairs(&pairs, &masses);
 
         let shaken = self.shake(&masses, &matrices, &modes, &pairs)?;
@@ -1181,6 +1197,28 @@ impl Analyst {
         }
     }
 
+    /// The floor freedom that gives most, where that is so much that the modes
+    /// drown in rounding; flexibilities are weighed by masses, so that metres
+    /// compare with radians.
+    fn too_soft(&self, masses: &Masses) -> Option<AnalysisError> {
+        let state = &self.states[0];
+        let matrices = masses.matrices();
+        let given = |i: usize| state.flexibility.get(i, i) * matrices[i / 3][i % 3][i % 3];
+        let all = 0..self.floor_numbers.len();
+        let softest = all.clone().max_by(|&a, &b| given(a).total_cmp(&given(b)))?;
+        let share = given(softest) / all.map(given).fold(f64::INFINITY, f64::min);
+        if !(share.is_finite() && share > TOO_SOFT) {
+            return None;
+        }
+        let number = self.floor_numbers[softest];
+        Some(AnalysisError::NearMechanism {
+            freedom: self.freedoms.describe(number, &self.tower),
+            nearby: self.freedoms.nearby(number, &self.tower),
+            state: words(state.state),
+            share,
+        })
+    }
+
     fn state(&self, wanted: LimitState) -> &State {
         self.states
             .iter()
@@ -1410,15 +1448,16 @@ impl State {
         };
         if let Err(failure) = factored {
             self.factor = None;
-            let state = match self.state {
-                LimitState::Unfactored => "unfactored section properties",
-                LimitState::Factored => "factored section properties",
-            };
+            if !(failure.pivot.is_finite() && failure.diagonal.is_finite()) {
+                return Err(AnalysisError::NotFinite("a stiffness"));
+            }
+            let state = words(self.state);
             return Err(if self.softening.is_some() {
                 AnalysisError::Buckles { state }
             } else {
                 AnalysisError::Mechanism {
                     freedom: freedoms.describe(failure.index, tower),
+                    nearby: freedoms.nearby(failure.index, tower),
                     state,
                 }
             });
@@ -1440,21 +1479,55 @@ impl State {
 }
 
 impl Response {
+    /// Nothing that is not a finite number leaves an analysis.
     fn finite(&self) -> Result<(), AnalysisError> {
-        if !self.modes.list.iter().all(|mode| mode.period.is_finite()) {
-            return Err(AnalysisError::NotFinite("a period"));
-        }
-        if !self
-            .cases
-            .iter()
-            .flat_map(|case| &case.floors)
-            .all(|u| u.is_finite())
-        {
-            return Err(AnalysisError::NotFinite("a displacement"));
-        }
-        if !self.stresses.iter().all(|stress| stress.share.is_finite()) {
-            return Err(AnalysisError::NotFinite("a stress"));
-        }
+        let modes = &self.modes.list;
+        all(
+            modes.iter().flat_map(|mode| {
+                let shares = mode.shares.into_iter().chain(mode.captured);
+                shares.chain([mode.period, mode.eigenvalue])
+            }),
+            "a period or a share of a mode",
+        )?;
+        all(
+            modes.iter().flat_map(|mode| mode.shape.iter().copied()),
+            "a mode shape",
+        )?;
+        all(
+            self.cases.iter().flat_map(|case| {
+                let drifts = case.storey_drift.iter().chain([&case.top_drift]);
+                drifts.flatten().chain(&case.floors).copied()
+            }),
+            "a displacement",
+        )?;
+        all(
+            self.stresses.iter().flat_map(|stress| {
+                let slopes = stress.share_by_size.iter().copied();
+                slopes.chain([stress.force, stress.stress, stress.share])
+            }),
+            "a stress",
+        )?;
+        all(
+            self.centres.iter().flatten().flat_map(|centres| {
+                let (mass, rigidity) = (centres.mass, centres.rigidity);
+                [mass.x, mass.y, rigidity.x, rigidity.y]
+            }),
+            "a centre of mass or rigidity",
+        )
+    }
+}
+
+fn words(state: LimitState) -> &'static str {
+    match state {
+        LimitState::Unfactored => "unfactored section properties",
+        LimitState::Factored => "factored section properties",
+    }
+}
+
+fn all(mut numbers: impl Iterator<Item = f64>, what: &'static str) -> Result<(), AnalysisError> {
+    if numbers.all(f64::is_finite) {
         Ok(())
+    } else {
+        Err(AnalysisError::NotFinite(what))
     }
 }

@@ -7,7 +7,7 @@
 
 use super::members::walls_in;
 use crate::elements::{FreedomKind, Place, Reading, Scalar};
-use crate::model::tower::{Base, Tower};
+use crate::model::tower::{Base, StoreyRange, Tower};
 
 #[derive(Debug, Clone, PartialEq)]
 pub struct Freedoms {
@@ -146,11 +146,7 @@ impl Freedoms {
 
     /// What a global number stands for, in words an engineer can look up.
     pub fn describe(&self, number: usize, tower: &Tower) -> String {
-        let level = self
-            .levels
-            .iter()
-            .rposition(|level| level.start <= number && level.count > 0)
-            .unwrap_or(0);
+        let level = self.level_of(number);
         let pattern = &self.levels[level].pattern;
         let local = number - self.levels[level].start;
         if pattern.tilt {
@@ -182,6 +178,59 @@ impl Freedoms {
             }
             None => format!("freedom {number}"),
         }
+    }
+}
+
+/// At most so many members are named.
+const NAMED: usize = 4;
+
+impl Freedoms {
+    /// Members that a freedom belongs to, by name: at a node those that stand or
+    /// end there, at a floor the walls and columns of the storey below it.
+    pub fn nearby(&self, number: usize, tower: &Tower) -> String {
+        let level = self.level_of(number);
+        let pattern = &self.levels[level].pattern;
+        let local = number - self.levels[level].start;
+        let node = (0..tower.nodes.len()).find(|&node| {
+            let rotation = pattern.rotation[node];
+            pattern.vertical[node] == Some(local)
+                || rotation == Some(local)
+                || rotation.map(|rx| rx + 1) == Some(local)
+        });
+        let node = node.filter(|_| !pattern.tilt);
+        let storeys = match node {
+            Some(_) => [level, level + 1],
+            None => [level.max(1); 2],
+        };
+        let here = |range: StoreyRange| storeys.iter().any(|&storey| range.contains(storey));
+        let ends = |from: usize, to: usize| node.is_none_or(|node| node == from || node == to);
+        let walls = tower.walls.iter().filter(|wall| {
+            here(wall.storeys) && tower.stands(wall.option) && ends(wall.from, wall.to)
+        });
+        let columns = tower
+            .columns
+            .iter()
+            .filter(|column| here(column.storeys) && ends(column.node, column.node));
+        let beams = tower.beams.iter().filter(|beam| {
+            node.is_some() && beam.storeys.contains(level) && ends(beam.from, beam.to)
+        });
+        let names: Vec<String> = walls
+            .map(|wall| format!("wall \"{}\"", wall.id))
+            .chain(columns.map(|column| format!("column \"{}\"", column.id)))
+            .chain(beams.map(|beam| format!("beam \"{}\"", beam.id)))
+            .collect();
+        match names.len() {
+            0 => "no wall, column or beam".to_owned(),
+            count if count <= NAMED => names.join(", "),
+            count => format!("{} and {} more", names[..NAMED].join(", "), count - NAMED),
+        }
+    }
+
+    fn level_of(&self, number: usize) -> usize {
+        self.levels
+            .iter()
+            .rposition(|level| level.start <= number && level.count > 0)
+            .unwrap_or(0)
     }
 }
 

@@ -574,6 +574,8 @@ fn carriers(tower: &Tower, standing: &Standing, source: Source) -> Vec<(usize, f
 
 /// Points of the sampling grid along each side of a floor.
 const SAMPLES: usize = 80;
+/// Squared distances this close, relatively and in m2, are equal.
+const TIE: f64 = 1e-9;
 /// Half the step of the central difference by the core's offset, m.
 const OFFSET_STEP: f64 = 0.25;
 
@@ -632,7 +634,8 @@ fn areas_at(tower: &Tower, standing: &Standing, extent: &Extent) -> Vec<f64> {
     let free: Vec<usize> = (0..supports.len())
         .filter(|&slot| supports[slot].2.is_none())
         .collect();
-    let mut counts = vec![0_usize; supports.len()];
+    let mut counts = vec![0.0; supports.len()];
+    let mut distances = vec![0.0; free.len()];
     if !free.is_empty() {
         for i in 0..SAMPLES * SAMPLES {
             let at = |index: usize, low: f64, high: f64| {
@@ -642,14 +645,20 @@ fn areas_at(tower: &Tower, standing: &Standing, extent: &Extent) -> Vec<f64> {
                 x: at(i % SAMPLES, extent.x_min, extent.x_max),
                 y: at(i / SAMPLES, extent.y_min, extent.y_max),
             };
-            let mut nearest = (free[0], f64::INFINITY);
-            for &slot in &free {
-                let distance = distance_squared(point, supports[slot].0, supports[slot].1);
-                if distance < nearest.1 {
-                    nearest = (slot, distance);
+            let mut nearest = f64::INFINITY;
+            for (distance, &slot) in distances.iter_mut().zip(&free) {
+                *distance = distance_squared(point, supports[slot].0, supports[slot].1);
+                nearest = nearest.min(*distance);
+            }
+            // A point as near to several loads them alike: whichever comes first
+            // in the file must not matter.
+            let tied = |distance: f64| distance <= nearest + TIE * (1.0 + nearest);
+            let ties = distances.iter().filter(|distance| tied(**distance)).count();
+            for (distance, &slot) in distances.iter().zip(&free) {
+                if tied(*distance) {
+                    counts[slot] += 1.0 / ties as f64;
                 }
             }
-            counts[nearest.0] += 1;
         }
     }
     // Stated areas come first and the rest of the floor goes to the others;
@@ -665,7 +674,7 @@ fn areas_at(tower: &Tower, standing: &Standing, extent: &Extent) -> Vec<f64> {
         .zip(counts)
         .map(|(support, count)| match support.2 {
             Some(area) => area * scale,
-            None => rest * count as f64 / (SAMPLES * SAMPLES) as f64,
+            None => rest * count / (SAMPLES * SAMPLES) as f64,
         })
         .collect()
 }

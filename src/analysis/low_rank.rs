@@ -196,6 +196,7 @@ impl LowRank {
             stiffness.assemble(&mut matrix);
             let factor = Factor::new(&matrix).map_err(|failure| AnalysisError::Mechanism {
                 freedom: freedoms.describe(failure.index, tower),
+                nearby: freedoms.nearby(failure.index, tower),
                 state: match state {
                     LimitState::Unfactored => "unfactored section properties",
                     LimitState::Factored => "factored section properties",

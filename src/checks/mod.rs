@@ -69,6 +69,9 @@ pub fn checks(tower: &Tower, response: &Response) -> Result<Vec<Check>, Analysis
     checks.extend(drift::checks(tower, response));
     checks.extend(stress::checks(tower, response));
     checks.extend(zones::checks(tower));
+    if checks.iter().any(|check| !check.demand.is_finite()) {
+        return Err(AnalysisError::NotFinite("what a check is held against"));
+    }
     Ok(checks)
 }
 

@@ -91,6 +91,9 @@ pub struct ProposeArguments {
     /// Most analyses of the search
     #[arg(long, value_name = "N", default_value_t = Settings::default().max_analyses, value_parser = count(1_000_000_000))]
     pub max_analyses: usize,
+    /// Go on with the run that was stopped in DIR; same tower file and settings
+    #[arg(long)]
+    pub resume: bool,
     /// Stop after so many seconds with what is found; may change the answer from run to run
     #[arg(long, value_name = "SECONDS", value_parser = seconds)]
     pub time_limit: Option<f64>,

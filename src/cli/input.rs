@@ -1,9 +1,9 @@
 //! The tower file that was asked for.
 
-use std::io::Read;
+use std::fs::File;
 use std::path::Path;
 
-use corewright::model::read::{TowerFile, parse_tower};
+use corewright::model::read::{TowerFile, parse_tower, read_limited};
 use corewright::report::summary::Origin;
 
 use super::message::Failure;
@@ -26,17 +26,16 @@ impl Input {
         } else {
             path.display().to_string()
         };
-        let mut text = String::new();
         let read = if standard {
-            std::io::stdin().lock().read_to_string(&mut text).map(drop)
+            read_limited(std::io::stdin().lock())
         } else {
-            std::fs::read_to_string(path).map(|read| text = read)
+            File::open(path).and_then(read_limited)
         };
-        if let Err(error) = read {
-            return Err(Failure::Input(format!(
+        let text = read.map_err(|error| {
+            Failure::Input(format!(
                 "{name}: cannot be read ({error}); a tower file in TOML, UTF-8, is wanted"
-            )));
-        }
+            ))
+        })?;
         let file = parse_tower(&text, &name).map_err(Failure::Faults)?;
         Ok(Input { name, text, file })
     }

@@ -9,6 +9,8 @@ mod check;
 mod compare;
 mod expand;
 mod input;
+mod journal;
+mod lock;
 mod message;
 mod outriggers;
 mod progress;

@@ -2,7 +2,7 @@
 //!
 //! One file a code, next to this one, every number with its clause and how it
 //! is known. A code whose rules are of the kinds below is one new file and its
-//! line in [`FILES`]; no other line of the program changes.
+//! line in `FILES`; no other line of the program changes.
 //!
 //! This room knows no tower: heights, systems and zones come in as arguments.
 

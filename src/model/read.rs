@@ -1,5 +1,6 @@
 //! Reading tower files.
 
+use std::io::{ErrorKind, Read};
 use std::path::Path;
 
 use toml::de::DeTable;
@@ -33,7 +34,8 @@ pub enum Form {
 /// All faults of the file at once, or the one that it cannot be opened.
 pub fn read_tower(path: &Path) -> Result<TowerFile, Faults> {
     let name = path.display().to_string();
-    match std::fs::read_to_string(path) {
+    let text = std::fs::File::open(path).and_then(read_limited);
+    match text {
         Ok(text) => parse_tower(&text, &name),
         Err(error) => {
             let fault = Fault {
@@ -49,6 +51,23 @@ pub fn read_tower(path: &Path) -> Result<TowerFile, Faults> {
             })
         }
     }
+}
+
+/// Largest tower file, bytes.
+pub const MOST_BYTES: u64 = 16 * 1024 * 1024;
+
+/// Reads all of `source` where it is no larger than a tower file may be.
+///
+/// # Errors
+/// When reading fails, when the bytes are not UTF-8, or beyond [`MOST_BYTES`].
+pub fn read_limited(source: impl Read) -> std::io::Result<String> {
+    let mut text = String::new();
+    source.take(MOST_BYTES + 1).read_to_string(&mut text)?;
+    if text.len() as u64 > MOST_BYTES {
+        let message = format!("it is larger than {} MiB", MOST_BYTES >> 20);
+        return Err(std::io::Error::new(ErrorKind::FileTooLarge, message));
+    }
+    Ok(text)
 }
 
 /// Validates the text of a tower file; `file_name` is for messages only.

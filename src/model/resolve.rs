@@ -72,7 +72,8 @@ pub(super) fn mass_of_loads(extent: Extent, dead: f64, imposed: f64, share: f64)
 
 /// Gravity load of a floor whose mass is stated, Pa.
 pub(super) fn dead_of_mass(extent: Extent, mass: f64) -> f64 {
-    mass * GRAVITY / area(extent)
+    // Rounded through kPa, so that the load itself can be printed exactly.
+    mass * GRAVITY / area(extent) / 1e3 * 1e3
 }
 
 pub(super) fn area(extent: Extent) -> f64 {
@@ -194,6 +195,9 @@ impl<'t> Names<'t> {
 /// Builds the model. `None` when the storeys cannot be counted.
 pub(super) fn resolve(text: &TowerText, log: &Log) -> Option<Resolved> {
     let count = count_storeys(text, log)?;
+    if too_many(text, log) {
+        return None;
+    }
     let mut resolver = Resolver {
         log,
         count,
@@ -220,6 +224,36 @@ fn count_storeys(text: &TowerText, log: &Log) -> Option<usize> {
         return None;
     }
     (count > 0).then_some(count)
+}
+
+/// Most entries of one list of the file.
+const MOST_ENTRIES: usize = 10_000;
+
+/// Whether a list is longer than any tower needs; what follows takes time and
+/// memory in proportion, or more.
+fn too_many(text: &TowerText, log: &Log) -> bool {
+    let lists = [
+        ("nodes", text.nodes.len()),
+        ("wall_groups", text.wall_groups.len()),
+        ("walls", text.walls.len()),
+        ("column_groups", text.column_groups.len()),
+        ("columns", text.columns.len()),
+        ("beam_groups", text.beam_groups.len()),
+        ("beams", text.beams.len()),
+        ("link_groups", text.link_groups.len()),
+        ("links", text.links.len()),
+        ("options", text.options.len()),
+    ];
+    let mut found = false;
+    for (key, count) in lists {
+        if count > MOST_ENTRIES {
+            let found_count = format!("{count} entries");
+            let allowed = format!("at most {MOST_ENTRIES}");
+            log.fault(&text.at.key(key), found_count, allowed);
+            found = true;
+        }
+    }
+    found
 }
 
 struct Resolver<'l> {

@@ -24,6 +24,9 @@ use super::table::{At, Section, Storeys, bound};
 use super::tower::{OpenEnd, Point};
 use super::validate::{coincide, within};
 
+/// Most grid lines of columns each way.
+const MOST_GRID_LINES: usize = 60;
+
 /// Columns nearer to the core's rectangle are left out, m.
 const CORE_MARGIN: f64 = 0.5;
 /// Shorter nibs beside a door cannot be modelled as panels, m.
@@ -461,6 +464,13 @@ fn columns(
         let lines = section.numbers(key, PLAN_M).unwrap_or_default();
         if !section.has(key) {
             section.miss(key, "a list of numbers (m)");
+        } else if lines.len() > MOST_GRID_LINES {
+            section.log.fault(
+                &section.at.key(key),
+                format!("{} grid lines", lines.len()),
+                format!("at most {MOST_GRID_LINES}"),
+            );
+            return Vec::new();
         } else if lines.windows(2).any(|pair| pair[1] - pair[0] < 0.5) {
             section.log.fault(
                 &section.at.key(key),

@@ -9,6 +9,11 @@ use super::tower::*;
 const SHORTEST_WALL: f64 = 0.2;
 /// Points closer than this are one point, m.
 const SAME_POINT: f64 = 1e-3;
+/// Members that come closer than this without meeting were meant to meet, m.
+const NEAR_MISS: f64 = 0.15;
+/// Most numbers that the stiffness of a tower and the flexibility of its floors
+/// may hold; a quarter of a gigabyte, and several such are needed at a time.
+const MOST_NUMBERS: usize = 32_000_000;
 /// Sine of the angle under which two directions count as in line.
 const IN_LINE: f64 = 1e-3;
 
@@ -35,6 +40,8 @@ pub(super) fn validate(resolved: &Resolved, log: &Log) {
     rules.places_of_arms(&tower.belts, &resolved.places.belts);
     rules.covered();
     if resolved.complete {
+        rules.fits();
+        rules.near_misses();
         rules.every_storey_stands();
         rules.support();
         rules.beam_ends();
@@ -295,6 +302,88 @@ impl Rules<'_> {
                     .find(|end| within(self.at(*end), self.at(host.from), self.at(host.to)))?;
                 Some((end, host))
             })
+    }
+
+    /// The matrices of the analysis are of a size that a computer can hold.
+    fn fits(&self) {
+        let tower = self.tower;
+        let count = tower.storey_count();
+        let mut bends = vec![false; tower.nodes.len()];
+        for column in tower.columns.iter().filter(|column| column.bends) {
+            bends[column.node] = true;
+        }
+        let freedoms: Vec<usize> = (1..=count)
+            .map(|level| {
+                let of_node = |node: usize| match self.carrying.any(node, level)
+                    || (level < count && self.carrying.any(node, level + 1))
+                {
+                    true => 1 + 2 * usize::from(bends[node]),
+                    false => 0,
+                };
+                3 + (0..tower.nodes.len()).map(of_node).sum::<usize>()
+            })
+            .collect();
+        let mut joined = vec![false; count + 1];
+        for place in tower.outriggers.places.iter().chain(&tower.belts.places) {
+            for storey in place.storeys.first + 1..=place.storeys.last.min(count) {
+                joined[storey - 1] = true;
+            }
+        }
+        let (mut numbers, mut block) = (9 * count * count, 0);
+        for (level, &width) in freedoms.iter().enumerate() {
+            block = if joined[level] { block + width } else { width };
+            numbers = numbers.saturating_add(2 * block * block);
+        }
+        if numbers > MOST_NUMBERS {
+            let most = freedoms.iter().max().copied().unwrap_or(0);
+            self.log.fault_with_hint(
+                &At::of_key("nodes"),
+                format!(
+                    "{count} storeys with up to {most} freedoms each: matrices of {} million numbers",
+                    numbers / 1_000_000
+                ),
+                format!("at most {} million", MOST_NUMBERS / 1_000_000),
+                "fewer walls and columns in a storey: merge panels in line, leave out columns that carry little",
+            );
+        }
+    }
+
+    /// Walls that end beside another wall, and nodes beside nodes, as if meant
+    /// to meet.
+    fn near_misses(&self) {
+        let tower = self.tower;
+        for (second, wall) in tower.walls.iter().enumerate() {
+            for (first, other) in tower.walls.iter().enumerate() {
+                if first == second || !overlap(wall.storeys, other.storeys) {
+                    continue;
+                }
+                let ends = [wall.from, wall.to];
+                if ends.contains(&other.from) || ends.contains(&other.to) {
+                    continue;
+                }
+                let (a, b) = (self.at(other.from), self.at(other.to));
+                let near = ends.into_iter().find_map(|end| {
+                    let gap = from_segment(self.at(end), a, b);
+                    (gap > SAME_POINT && gap < NEAR_MISS).then_some((end, gap))
+                });
+                let Some((end, gap)) = near else { continue };
+                let spanned = tower
+                    .links
+                    .iter()
+                    .any(|link| link.from == end || link.to == end);
+                if !spanned {
+                    self.log.warn(
+                        &self.places.walls[second],
+                        format!(
+                            "node \"{}\" is {gap:.3} m from wall \"{}\" without being joined to it; share a node where they meet",
+                            self.id(end),
+                            other.id
+                        ),
+                    );
+                    break;
+                }
+            }
+        }
     }
 
     fn mass_centres(&self) {
@@ -744,6 +833,17 @@ fn off_line(p: Point, a: Point, b: Point) -> f64 {
 /// Coordinate of `p` along the line from `a` to `b`, m.
 fn along_line(p: Point, a: Point, b: Point) -> f64 {
     ((b.x - a.x) * (p.x - a.x) + (b.y - a.y) * (p.y - a.y)) / distance(a, b)
+}
+
+/// Distance of `p` from the segment from `a` to `b`, m.
+fn from_segment(p: Point, a: Point, b: Point) -> f64 {
+    let length = distance(a, b);
+    let along = along_line(p, a, b).max(0.0).min(length) / length;
+    let foot = Point {
+        x: a.x + along * (b.x - a.x),
+        y: a.y + along * (b.y - a.y),
+    };
+    distance(p, foot)
 }
 
 /// Whether `p` lies on the segment from `a` to `b`, away from its ends.

@@ -4,6 +4,7 @@
 
 pub mod conflict;
 pub mod layouts;
+pub mod memory;
 pub mod rank;
 pub mod run;
 pub mod scheme;

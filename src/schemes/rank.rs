@@ -39,9 +39,25 @@ pub fn difference(a: &Scheme, b: &Scheme) -> usize {
 /// Fewest ideas by which two schemes of the same layout must differ.
 const FEWEST_APART: usize = 2;
 
-/// Whether two schemes differ in idea: another layout, or enough ideas apart.
+/// Whether two schemes differ in idea: another layout, or enough ideas apart. Mirror
+/// images of each other, alike in every period and in concrete, do not.
 pub fn distinct(a: &Scheme, b: &Scheme) -> bool {
-    layout_of(a) != layout_of(b) || difference(a, b) >= FEWEST_APART
+    let apart = layout_of(a) != layout_of(b) || difference(a, b) >= FEWEST_APART;
+    apart && !mirrored(a, b)
+}
+
+/// Results closer than this, relatively, are those of one design or its mirror image.
+const ALIKE: f64 = 1e-6;
+
+fn mirrored(a: &Scheme, b: &Scheme) -> bool {
+    let alike = |a: f64, b: f64| (a - b).abs() <= ALIKE * a.abs().max(b.abs()).max(1.0);
+    let (first, second) = (&a.response.modes.list, &b.response.modes.list);
+    alike(a.added_concrete, b.added_concrete)
+        && first.len() == second.len()
+        && first
+            .iter()
+            .zip(second)
+            .all(|(a, b)| alike(a.period, b.period))
 }
 
 /// The best `wanted` schemes that differ in idea, best first. The best of each

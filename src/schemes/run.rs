@@ -24,6 +24,7 @@ use rayon::prelude::*;
 
 use super::conflict::{Conflict, diagnose};
 use super::layouts::{self, Layout};
+use super::memory::{Finished, Forgetful, Found, Memory, Task};
 use super::rank::pick;
 use super::scheme::Scheme;
 use crate::analysis::analyst::AnalysisError;
@@ -32,7 +33,7 @@ use crate::checks::{Check, all_pass};
 use crate::design::evaluate::{LayoutProblem, concrete, examine};
 use crate::model::tower::Tower;
 use crate::search;
-use crate::search::outcome::{Outcome, Point};
+use crate::search::outcome::Stop;
 use crate::search::progress::{Observer, Progress};
 
 /// What a run may spend and what it should bring.
@@ -188,11 +189,26 @@ pub fn propose(
     settings: &Settings,
     watcher: &dyn Watcher,
 ) -> Result<Proposal, AnalysisError> {
+    propose_with(tower, settings, watcher, &Forgetful)
+}
+
+/// [`propose`], with a memory of finished searches: those that it recalls are
+/// skipped, and the answer is the same to the last digit.
+///
+/// # Errors
+/// As [`propose`].
+pub fn propose_with(
+    tower: &Tower,
+    settings: &Settings,
+    watcher: &dyn Watcher,
+    memory: &dyn Memory,
+) -> Result<Proposal, AnalysisError> {
     let given = Scheme::of(tower.as_given())?;
     let mut run = Run {
         tower,
         settings,
         given_concrete: concrete(&tower.as_given()),
+        memory,
         ledger: Ledger {
             watcher,
             analyses: AtomicUsize::new(1),
@@ -205,7 +221,9 @@ pub fn propose(
     let mut pool = run.verified(searched.iter().map(|found| found.tower.clone()).collect());
     let varied = run.vary(&pool);
     pool.extend(run.verified(varied));
-    if given.feasible {
+    // The tower as given is no scheme where another takes no more concrete.
+    let as_good = |scheme: &Scheme| scheme.feasible && scheme.added_concrete <= 0.0;
+    if given.feasible && !pool.iter().any(as_good) {
         pool.push(given.clone());
     }
     let schemes = pick(pool, settings.schemes);
@@ -249,6 +267,7 @@ struct Run<'a> {
     tower: &'a Tower,
     settings: &'a Settings,
     given_concrete: f64,
+    memory: &'a dyn Memory,
     ledger: Ledger<'a>,
 }
 
@@ -289,11 +308,11 @@ enum Merit {
 }
 
 impl Merit {
-    fn of(outcome: &Outcome) -> (Self, Option<Vec<f64>>) {
-        let point = |point: &Point| Some(point.x.clone());
-        match (&outcome.best, &outcome.least_infeasible) {
-            (Some(best), _) => (Merit::Feasible(best.evaluation.objective), point(best)),
-            (None, Some(nearest)) => (Merit::Short(nearest.evaluation.violation()), point(nearest)),
+    fn of(finished: &Finished) -> (Self, Option<Vec<f64>>) {
+        let point = |found: &Found| Some(found.x.clone());
+        match (&finished.best, &finished.nearest) {
+            (Some(best), _) => (Merit::Feasible(best.objective), point(best)),
+            (None, Some(nearest)) => (Merit::Short(nearest.violation), point(nearest)),
             (None, None) => (Merit::Failed, None),
         }
     }
@@ -364,10 +383,10 @@ impl Run<'_> {
         layouts
             .par_iter()
             .map(|layout| {
-                let problem =
-                    LayoutProblem::new(&layout.apply(self.tower), self.given_concrete).relaxed();
+                let tower = layout.apply(self.tower);
+                let problem = LayoutProblem::new(&tower, self.given_concrete).relaxed();
                 let start = problem.read(self.tower);
-                let outcome = self.solve(&problem, &start, each, 0);
+                let outcome = self.solve(&tower, &problem, true, &start, each, 0);
                 let (merit, start) = Merit::of(&outcome);
                 let done = done.fetch_add(1, Ordering::Relaxed) + 1;
                 self.ledger
@@ -477,14 +496,11 @@ impl Run<'_> {
                     .start
                     .clone()
                     .unwrap_or_else(|| problem.read(&tower));
-                let outcome = self.solve(&problem, &start, each, PROVING);
+                let outcome = self.solve(&tower, &problem, false, &start, each, PROVING);
                 let done = done.fetch_add(1, Ordering::Relaxed) + 1;
                 self.ledger
                     .tell(Phase::Searching, done, chosen.len(), best_of(&outcome));
-                let point = outcome
-                    .best
-                    .as_ref()
-                    .or(outcome.least_infeasible.as_ref())?;
+                let point = outcome.best.as_ref().or(outcome.nearest.as_ref())?;
                 Some(Searched {
                     layout: candidate.layout.clone(),
                     tower: problem.tower_at(&tower, &point.x),
@@ -515,7 +531,7 @@ impl Run<'_> {
             .filter_map(|tower| {
                 let problem = LayoutProblem::new(tower, self.given_concrete);
                 let start = problem.read(tower);
-                let outcome = self.solve(&problem, &start, each, PROVING);
+                let outcome = self.solve(tower, &problem, false, &start, each, PROVING);
                 let done = done.fetch_add(1, Ordering::Relaxed) + 1;
                 self.ledger
                     .tell(Phase::Varying, done, count, best_of(&outcome));
@@ -563,14 +579,33 @@ impl Run<'_> {
         tower
     }
 
-    /// `proving`: analyses that may go into raising the lower bound.
+    /// Searches `tower`'s layout, or recalls the search. `proving`: analyses that
+    /// may go into raising the lower bound.
     fn solve(
         &self,
+        tower: &Tower,
         problem: &LayoutProblem,
+        relaxed: bool,
         start: &[f64],
         max_analyses: usize,
         proving: usize,
-    ) -> Outcome {
+    ) -> Finished {
+        let key = self.memory.remembers().then(|| {
+            let task = Task {
+                tower,
+                given_concrete: self.given_concrete,
+                relaxed,
+                start,
+                max_analyses,
+                proving,
+                node_limit: NODES,
+            };
+            task.key()
+        });
+        if let Some(known) = key.as_ref().and_then(|key| self.memory.recall(key)) {
+            self.ledger.count(known.analyses, known.failures);
+            return known;
+        }
         let settings = search::settings::Settings {
             max_analyses,
             proving,
@@ -579,8 +614,18 @@ impl Run<'_> {
         };
         let mut listener = Listener {
             ledger: &self.ledger,
+            analyses: 0,
+            failures: 0,
         };
-        search::solve(problem, start, &settings, &mut listener)
+        let outcome = search::solve(problem, start, &settings, &mut listener);
+        let finished = Finished::of(&outcome, listener.analyses, listener.failures);
+        // A search that was cut short is not what its key promises. Once raised,
+        // the wish to stop stays, so that asking now is asking early enough.
+        let whole = outcome.stop != Stop::Interrupted && !self.ledger.watcher.should_stop();
+        if let (Some(key), true) = (key, whole) {
+            self.memory.keep(&key, &finished);
+        }
+        finished
     }
 
     fn diagnose(&self, nearest: &Scheme) -> Conflict {
@@ -593,7 +638,8 @@ impl Run<'_> {
         let done = AtomicUsize::new(0);
         diagnose(&nearest.tower, failing, |tower| {
             let problem = LayoutProblem::new(tower, self.given_concrete);
-            let outcome = self.solve(&problem, &problem.read(tower), SEARCHING, 0);
+            let start = problem.read(tower);
+            let outcome = self.solve(tower, &problem, false, &start, SEARCHING, 0);
             let done = done.fetch_add(1, Ordering::Relaxed) + 1;
             self.ledger.tell(Phase::Diagnosing, done, done, None);
             outcome.best.is_some()
@@ -602,6 +648,11 @@ impl Run<'_> {
 }
 
 impl Ledger<'_> {
+    fn count(&self, analyses: usize, failures: usize) {
+        self.analyses.fetch_add(analyses, Ordering::Relaxed);
+        self.failures.fetch_add(failures, Ordering::Relaxed);
+    }
+
     fn tell(&self, phase: Phase, done: usize, of: usize, best: Option<f64>) {
         let analyses = self.analyses.load(Ordering::Relaxed);
         self.watcher.tell(&News {
@@ -616,14 +667,16 @@ impl Ledger<'_> {
 
 struct Listener<'a> {
     ledger: &'a Ledger<'a>,
+    analyses: usize,
+    failures: usize,
 }
 
 impl Observer for Listener<'_> {
     fn analysed(&mut self, progress: &Progress) {
-        self.ledger.analyses.fetch_add(1, Ordering::Relaxed);
-        if progress.objective.is_none() {
-            self.ledger.failures.fetch_add(1, Ordering::Relaxed);
-        }
+        let failed = usize::from(progress.objective.is_none());
+        self.analyses += 1;
+        self.failures += failed;
+        self.ledger.count(1, failed);
     }
 
     fn should_stop(&self) -> bool {
@@ -631,11 +684,8 @@ impl Observer for Listener<'_> {
     }
 }
 
-fn best_of(outcome: &Outcome) -> Option<f64> {
-    outcome
-        .best
-        .as_ref()
-        .map(|point| point.evaluation.objective)
+fn best_of(outcome: &Finished) -> Option<f64> {
+    outcome.best.as_ref().map(|found| found.objective)
 }
 
 /// Copies of a scheme's tower, each with one of the groups that it changed most

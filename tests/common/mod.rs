@@ -1,6 +1,8 @@
 //! Small towers built by words, for tests.
 #![allow(dead_code)]
 
+pub mod generator;
+
 use std::collections::BTreeMap;
 
 use corewright::analysis::analyst::{Analyst, Response};

@@ -349,7 +349,7 @@ pub fn tradeoff(views: &[View]) -> Markup {
             .filter(|other| same(other))
             .map(|other| other.name.as_str())
             .collect();
-        let name = if passing[..index].iter().any(|other| same(&other)) {
+        let name = if passing[..index].iter().any(|other| same(other)) {
             String::new()
         } else {
             shared.join(", ").replace(", Scheme", ",")

@@ -1,7 +1,7 @@
 //! Results as one self-contained HTML page: no network, nothing to install.
 //!
 //! The page is made from the results alone, as they stand in JSON, so it can be
-//! made again from a folder at any time. [`towers`] lays out one tower, the other
+//! made again from a folder at any time. `towers` lays out one tower, the other
 //! files draw one kind of picture each; `page.css` and `page.js` travel inside.
 //! Without scripts everything is shown; in print everything is shown and still.
 
