@@ -80,6 +80,8 @@ fn outside_crates_come_in_by_their_own_doors() {
         ("rayon", vec!["placement", "schemes", "cli"]),
         ("clap", vec!["cli"]),
         ("indicatif", vec!["cli"]),
+        ("maud", vec!["report"]),
+        ("svg", vec!["report"]),
         ("toml", vec!["codes", "model", "report", "cli"]),
     ];
     for path in sources(&root().join("src")) {

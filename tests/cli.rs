@@ -644,3 +644,83 @@ fn the_annotated_tower_can_be_checked_and_expanded() {
     assert_eq!(first, second);
     assert!(text.contains("Marram House"));
 }
+
+#[test]
+fn the_page_is_made_again_from_the_results_alone() {
+    let desk = Desk::with(&twisting());
+    let (code, ..) = desk.run(&["propose", "tower.toml", "--out", "out", "--schemes", "2"]);
+    assert_eq!(code, 0);
+    let first = fs::read_to_string(desk.path("out/report.html")).unwrap();
+    fs::remove_file(desk.path("out/report.html")).unwrap();
+    fs::remove_file(desk.path("tower.toml")).unwrap();
+    let (code, output, errors) = desk.run(&["report", "out", "--plan", "plan.svg"]);
+    assert_eq!((code, output.as_str(), errors.as_str()), (0, "", ""));
+    let again = fs::read_to_string(desk.path("out/report.html")).unwrap();
+    assert_eq!(first, again);
+    // Nothing is fetched: no attribute or style rule points outside the page.
+    for outside in ["src=", "href=\"http", "url(http", "@import"] {
+        assert!(!again.contains(outside), "the page holds {outside}");
+    }
+    let plan = fs::read_to_string(desk.path("plan.svg")).unwrap();
+    assert!(plan.starts_with("<svg") && plan.contains("xmlns=\"http://www.w3.org/2000/svg\""));
+
+    let (code, output, errors) = desk.run(&["report", "nowhere"]);
+    assert_eq!((code, output.as_str()), (2, ""));
+    assert!(errors.contains("schemes.json") && errors.contains("propose"));
+    fs::write(desk.path("out/schemes.json"), "{}").unwrap();
+    let (code, _, errors) = desk.run(&["report", "out"]);
+    assert_eq!(code, 2);
+    assert!(errors.contains("run propose again"), "{errors}");
+}
+
+#[test]
+fn names_of_a_tower_cannot_break_its_page() {
+    let nasty = with(
+        LANTERN,
+        &[("Low Lantern", "<script>alert('&amp;')</script>")],
+    );
+    let desk = Desk::with(&nasty);
+    let (code, ..) = desk.run(&["check", "tower.toml", "--report", "page.html"]);
+    assert_eq!(code, 0);
+    let page = fs::read_to_string(desk.path("page.html")).unwrap();
+    assert!(!page.contains("<script>alert"));
+    assert!(page.contains("&lt;script&gt;alert('&amp;amp;')"));
+}
+
+#[test]
+fn two_towers_stand_side_by_side() {
+    let desk = Desk::with(&twisting());
+    fs::write(desk.path("other.toml"), LANTERN).unwrap();
+    let (code, text, _) = desk.run(&["compare", "tower.toml", "other.toml"]);
+    // The first is held against a ratio that it does not meet.
+    assert_eq!(code, 1);
+    assert!(text.contains("first: Low Lantern (tower.toml)") && text.contains("FAILS"));
+    let (code, ..) = desk.run(&["compare", "other.toml", "other.toml"]);
+    assert_eq!(code, 0);
+
+    let thicker = with(LANTERN, &[("name = \"Low Lantern\"", "name = \"Heavier\"")]);
+    let thicker = thicker.replacen("thickness_mm = 300", "thickness_mm = 400", 1);
+    fs::write(desk.path("heavier.toml"), thicker).unwrap();
+    let (_, text, _) = desk.run(&["compare", "other.toml", "heavier.toml", "--json"]);
+    let report: Value = serde_json::from_str(&text).unwrap();
+    for (tower, file) in [("first", "other.toml"), ("second", "heavier.toml")] {
+        let (_, alone, _) = desk.run(&["check", file, "--json"]);
+        let alone: Value = serde_json::from_str(&alone).unwrap();
+        assert_eq!(report[tower], alone, "{tower}");
+    }
+    let differences = &report["differences"];
+    let of = |tower: &str, path: &str| report[tower].pointer(path).unwrap().as_f64().unwrap();
+    for (key, path) in [
+        ("period_x_s", "/periods/x_s"),
+        ("period_twist_s", "/periods/twist_s"),
+        ("ratio_to_smaller", "/ratio_to_smaller"),
+        ("total_m3", "/quantities/total_m3"),
+    ] {
+        let difference = differences[key].as_f64().unwrap();
+        assert_eq!(difference, of("second", path) - of("first", path), "{key}");
+    }
+    assert!(differences["total_m3"].as_f64().unwrap() > 0.0);
+    let (code, _, errors) = desk.run(&["compare", "tower.toml", "missing.toml"]);
+    assert_eq!(code, 2);
+    assert!(errors.contains("missing.toml"));
+}

@@ -174,6 +174,7 @@ pub struct CaseResponse {
     /// Of the drifts.
     pub direction: Direction,
     pub action: Action,
+    pub state: LimitState,
     /// Storey shears in that direction, N, bottom to top.
     pub shears: Vec<f64>,
     /// Storey drift over height at the centre of the floor, signed. Without the
@@ -1379,6 +1380,7 @@ impl Case {
             name: self.name.clone(),
             direction: self.direction,
             action: self.action,
+            state: self.state,
             centre_drift: self.centres.iter().map(|probe| probe.of(&floors)).collect(),
             p_delta: Vec::new(),
             shears,
@@ -1417,6 +1419,7 @@ impl Case {
             name: self.name.clone(),
             direction: self.direction,
             action: self.action,
+            state: self.state,
             centre_drift: by.excited.motions(centres.iter().map(Vec::as_slice)),
             p_delta: Vec::new(),
             shears: (0..count)

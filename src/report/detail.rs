@@ -387,9 +387,10 @@ pub struct CaseSummary {
 
 impl CaseSummary {
     fn all(tower: &Tower, response: &Response) -> Vec<Self> {
-        let cases = tower.lateral_cases.iter().zip(&response.cases);
-        cases
-            .map(|(case, moved)| CaseSummary {
+        response
+            .cases
+            .iter()
+            .map(|case| CaseSummary {
                 name: case.name.clone(),
                 direction: match case.direction {
                     Direction::X => "x".into(),
@@ -400,8 +401,8 @@ impl CaseSummary {
                     Action::Earthquake => "earthquake".into(),
                 },
                 state: state(case.state).into(),
-                storey_drift: moved.storey_drift.clone(),
-                top_drift: moved.top_drift,
+                storey_drift: case.storey_drift.clone(),
+                top_drift: case.top_drift,
                 storey_drift_limit: match case.action {
                     Action::Wind => tower.limits.wind_storey_drift.value,
                     Action::Earthquake => tower.limits.earthquake_storey_drift.value,

@@ -149,8 +149,8 @@ pub fn standalone(view: &View, tower: &TowerSummary, list: &[Measure]) -> String
     let band = bands(view, tower)[0];
     let first = &list[..1];
     let mut text = String::from("svg{font-family:sans-serif;background:#fff}.used{fill:none}");
-    text.push_str(&style(first).replace(&format!("[data-measure={}] ", first[0].key), ""));
     text.push_str(include_str!("plan.css"));
+    text.push_str(&style(first).replace(&format!("[data-measure={}] ", first[0].key), ""));
     let drawing = drawing("plan", view, tower, first, band)
         .set("xmlns", "http://www.w3.org/2000/svg")
         .set("style", "--ink:#1b2430;--quiet:#5b6673;--paper:#fff;--plate:#f3f5f7;--grey:#b7bfc8;--accent:#b3261e")
@@ -455,10 +455,11 @@ fn column_node(frame: &Frame, view: &View, column: &ColumnSummary, storey: usize
     )))
 }
 
-/// Shortest wall with a label of its own, and least distance between labels of
-/// one group, m.
+/// Shortest wall with a label of its own, m.
 const LABELLED: f64 = 1.5;
-const APART: f64 = 4.0;
+/// Room that a label's letter takes, and room between labels, in the picture.
+const LETTER: f64 = 6.6;
+const BETWEEN: f64 = 10.0;
 
 fn wall_label(
     frame: &Frame,
@@ -476,9 +477,20 @@ fn wall_label(
         0.5 * (wall.from_m[1] + wall.to_m[1]),
     ];
     let upright = dy.abs() > dx.abs();
-    let near = labelled
-        .iter()
-        .any(|(other, way)| *way == upright && (other[0] - at[0]).hypot(other[1] - at[1]) < APART);
+    let text = if !wall.stood_as_given {
+        format!("{} new", short(zone.size_mm))
+    } else if changed(zone) {
+        format!("{}→{}", short(zone.given_mm), short(zone.size_mm))
+    } else {
+        short(zone.size_mm)
+    };
+    // With room for the mark of what it buys.
+    let room = ((text.chars().count() + 4) as f64 * LETTER + BETWEEN) / frame.scale;
+    let near = labelled.iter().any(|(other, way)| {
+        *way == upright
+            && (other[0] - at[0]).abs() < room
+            && (other[1] - at[1]).abs() * frame.scale < 2.0 * BETWEEN
+    });
     if dx.hypot(dy) < LABELLED || near {
         return None;
     }
@@ -497,13 +509,6 @@ fn wall_label(
     };
     let slope = slope_at(view, "wall_thickness", Some(&wall.group), storey);
     let mut group = Group::new().set("aria-hidden", "true");
-    let text = if !wall.stood_as_given {
-        format!("{} new", short(zone.size_mm))
-    } else if changed(zone) {
-        format!("{}→{}", short(zone.given_mm), short(zone.size_mm))
-    } else {
-        short(zone.size_mm)
-    };
     for measure in list {
         let step = measure.step(slope, measure.largest(view.sensitivities));
         let mark = step.mark();
