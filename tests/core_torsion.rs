@@ -21,8 +21,9 @@ const TORSION: f64 = 0.180;
 /// Thickness is divided, and E multiplied, by this: membrane stiffness stays,
 /// and St Venant torsion would fall by its square, which the factor of wall
 /// shear gives back. What is left out is shear deformation alone, as in
-/// Vlasov's theory.
-const THINNER: f64 = 1000.0;
+/// Vlasov's theory: it falls by the square of this. Much more would leave fewer than
+/// six digits, which the program refuses.
+const THINNER: f64 = 200.0;
 
 /// The channel, mouth at positive x, shear centre at the origin, floors of
 /// 144 t/m with r^2 = 96 m2 centred on it. `with_torsion`: St Venant torsion counts.

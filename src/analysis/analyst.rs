@@ -285,9 +285,9 @@ const MOST_MODES: usize = 60;
 /// Softest over stiffest flexibility beyond which modes that cannot be found are
 /// blamed on it.
 const TOO_SOFT: f64 = 1e8;
-/// Relative error up to which a displacement keeps six digits: half a unit in the
-/// sixth.
-const SIX_DIGITS: f64 = 5e-7;
+/// Relative error up to which a displacement keeps six digits, with some room
+/// for what one step of refinement does not see.
+const SIX_DIGITS: f64 = 2e-7;
 
 impl Analyst {
     /// For the present layout of `tower`.
