@@ -23,7 +23,7 @@ const TORSION: f64 = 0.180;
 /// shear gives back. What is left out is shear deformation alone, as in
 /// Vlasov's theory: it falls by the square of this. Much more would leave fewer than
 /// six digits, which the program refuses.
-const THINNER: f64 = 200.0;
+const THINNER: f64 = 150.0;
 
 /// The channel, mouth at positive x, shear centre at the origin, floors of
 /// 144 t/m with r^2 = 96 m2 centred on it. `with_torsion`: St Venant torsion counts.
