@@ -150,14 +150,16 @@ impl CutMaker {
             let modes = self.slow_modes(response, cap);
             let shapes = analyst.mode_shapes(&response.masses, &modes);
             let majorants = self.majorants_of(analyst.tower().period_state);
-            for (column, mode) in modes.iter().enumerate() {
+            for column in 0..modes.len() {
+                // Any vector will do, but K and M must see the very same one.
+                let vector = shapes.col(column);
                 let (k, k_slopes) = analyst
                     .stiffness(analyst.tower().period_state)
-                    .energy_majorant(majorants, shapes.col(column), &values);
+                    .energy_majorant(majorants, vector, &values);
                 let (m, m_slopes) = analyst.mass_model().energy_minorant(
                     &self.minorants,
                     &response.masses,
-                    &mode.shape,
+                    &floors_of(vector, analyst.floor_numbers()),
                 );
                 let slopes: Vec<f64> = k_slopes
                     .iter()
@@ -169,11 +171,11 @@ impl CutMaker {
         }
         for &(case, most) in &self.work {
             let moved = analyst.case_displacements(case);
-            let floors = &response.cases[case].floors;
+            // f'q of this very q: it holds for any q, however q was rounded.
             let work: f64 = analyst
                 .case_forces(case)
                 .iter()
-                .zip(floors)
+                .zip(floors_of(&moved, analyst.floor_numbers()))
                 .map(|(f, u)| f * u)
                 .sum();
             let state = analyst.tower().lateral_cases[case].state;
@@ -209,6 +211,11 @@ impl CutMaker {
         let found = self.majorants.iter().find(|(known, _)| *known == state);
         &found.expect("every state of a cut has majorants").1
     }
+}
+
+/// Floor motions of levels 1 to N out of a vector over all freedoms.
+fn floors_of(vector: &[f64], floor_numbers: &[usize]) -> Vec<f64> {
+    floor_numbers.iter().map(|&number| vector[number]).collect()
 }
 
 /// `constant + slopes . sizes >= lower` as a cut on the variables, loosened by a
