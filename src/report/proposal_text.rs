@@ -1,7 +1,7 @@
 //! A search told as text: the answer, the schemes side by side, then each.
 
 use super::check_text::{heading, notes, push, section};
-use super::numbers::{fixed, signed_amount, signed_significant, thousands, utilisation};
+use super::numbers::{amount, fixed, signed_amount, signed_significant, thousands, utilisation};
 use super::summary::{
     BoundSummary, ConflictSummary, CoverageSummary, KeySummary, ProposalReport, Results,
     SchemeSummary, SensitivitySummary, Status,
@@ -88,9 +88,12 @@ pub fn verdict(
                 1 => "1 scheme passes".to_owned(),
                 more => format!("{more} schemes pass"),
             };
+            let best = match least {
+                removed if removed < 0.0 => format!("takes out {} m3", amount(-removed)),
+                added => format!("adds {} m3", amount(added)),
+            };
             format!(
-                "FOUND: {count} every check; the least costs {} m3 of concrete against the tower as given.{early}",
-                signed_amount(least)
+                "FOUND: {count} every check; the best {best} of concrete, compared with the tower as given.{early}"
             )
         }
         Status::Infeasible if bound.is_some_and(|bound| bound.impossible) => format!(
