@@ -103,7 +103,8 @@ pub struct Sensitivity {
     pub period_twist: f64,
     /// 1/m
     pub ratio: f64,
-    /// Worst storey drift of each lateral case, 1/m.
+    /// Worst storey drift of each lateral case, 1/m. Where several places drift alike,
+    /// as both ends of a symmetric plan do, that of the lowest storey and first end.
     pub drift: Vec<f64>,
     /// m3/m
     pub concrete: f64,
