@@ -1,6 +1,6 @@
 //! Eigenvalues of whole towers against SciPy.
 //!
-//! Matrices of the towers below were written by `examples/write_matrices.rs` and
+//! Matrices of the towers below were written by `tests/reference/eigen/write_matrices.rs` and
 //! solved by `tests/reference/eigen/solve_modes.py`: ARPACK in shift-invert mode
 //! and LAPACK after exact condensation (SciPy 1.17.1, NumPy 2.4.6). The stored
 //! results are the reference; `tests/reference/eigen/README.md` says how the
