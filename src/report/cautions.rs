@@ -9,7 +9,7 @@ pub const CAUTIONS: [&str; 4] = [
      those given, and the design of members (reinforcement, connections, foundations).",
     "Limits, factors and clauses marked \"from memory\" are to be verified against the standard \
      before anyone relies on them.",
-    "A search looks at many designs, not at all: a cheaper scheme may exist down to the lower \
+    "A search looks at many designs, not at every one: a cheaper scheme may exist down to the lower \
      bound, where one is stated, and \"nothing found\" alone does not mean \"impossible\".",
 ];
 
